@@ -1,0 +1,73 @@
+package design
+
+import (
+	"gonum.org/v1/gonum/mat"
+
+	"example.com/trammel/internal/factored"
+	"example.com/trammel/internal/lsq"
+)
+
+// condense reduces a form of many rows to the triangle of its QR
+// factorisation, built block by block (J. Demmel, L. Grigori, M. Hoemmen and
+// J. Langou, "Communication-optimal parallel and sequential QR and LU
+// factorizations", SIAM J. Sci. Comput. 34 (2012) A206-A239): its columns stand
+// to each other as those of the form do.
+func condense(form *factored.Form) *lsq.Problem {
+	n, p := form.N, len(form.Cols)
+	block := max(4096, 4*p)
+	var r *mat.Dense
+	for from := 0; from < n; from += block {
+		to := min(n, from+block)
+		part := formRows(form, from, to)
+		m := Matrix{part}
+		rows := to - from
+		old := 0
+		if r != nil {
+			old = p
+		}
+		x := mat.NewDense(max(rows+old, p), p, nil)
+		col := make([]float64, rows)
+		for j := range p {
+			m.ColumnTo(col, nil, j)
+			for i, v := range col {
+				x.Set(i, j, v)
+			}
+			for i := range old {
+				x.Set(rows+i, j, r.At(i, j))
+			}
+		}
+		var qr mat.QR
+		qr.Factorize(x)
+		var next mat.Dense
+		qr.RTo(&next)
+		r = mat.DenseCopyOf(next.Slice(0, p, 0, p))
+	}
+	q := &lsq.Problem{N: p, P: p, X: make([]float64, p*p)}
+	for j := range p {
+		for i := range p {
+			q.X[j*p+i] = r.At(i, j)
+		}
+	}
+	return q
+}
+
+// formRows is the form of rows [from, to).
+func formRows(form *factored.Form, from, to int) *factored.Form {
+	out := &factored.Form{N: to - from, Cols: form.Cols}
+	for _, v := range form.Nums {
+		part := factored.Num{Hi: v.Hi[from:to]}
+		if v.Lo != nil {
+			part.Lo = v.Lo[from:to]
+		}
+		out.Nums = append(out.Nums, part)
+	}
+	for _, c := range form.Cats {
+		if c.Bits != nil {
+			c.Bits = c.Bits[from:to]
+		} else {
+			c.Codes = c.Codes[from:to]
+		}
+		out.Cats = append(out.Cats, c)
+	}
+	return out
+}
