@@ -75,11 +75,6 @@ func prepare(m *formula.Model, t *Table, opts *Options) (*Frame, *Error) {
 	}
 	f.Matrix = &Matrix{form: form}
 	p.describe()
-	if n, k := len(f.Y), len(p.cols); n < k {
-		return nil, &Error{Code: codeTooFewRows, Text: m.Text, Span: m.Terms.Pos,
-			Message: fmt.Sprintf("the model has %s and %s", errtext.Count(k, "column"), errtext.Count(n, "fitted row")),
-			Hint:    "give at least as many rows as columns, or take terms out"}
-	}
 	if !opts.NoRankCheck {
 		if err := f.checkRank(); err != nil {
 			return nil, err
@@ -307,6 +302,12 @@ func (p *Plan) learn(x *expansion, sel *selection, f *Frame) (*factored.Form, *E
 	if len(c.coded) == 0 {
 		return nil, &Error{Code: codeNoColumns, Text: p.text, Span: p.model.Terms.Pos,
 			Message: "the model has no column to fit", Hint: "write " + p.withTerms("intercept") + " for the constant model"}
+	}
+	// Before anything of the size of the columns is made.
+	if n, k := t.rows, len(c.coded); n < k {
+		return nil, &Error{Code: codeTooFewRows, Text: p.text, Span: p.model.Terms.Pos,
+			Message: fmt.Sprintf("the model has %s and %s", errtext.Count(k, "column"), errtext.Count(n, "fitted row")),
+			Hint:    "give at least as many rows as columns, or take terms out"}
 	}
 	if err := c.checkCells(p, cats); err != nil {
 		return nil, err
