@@ -27,11 +27,11 @@ const (
 // hand-made 0/1 columns that say again which furnace it was, and the porosity
 // in percent.
 func Furnaces() []byte {
-	rng := rand.New(rand.NewPCG(7, 11))
+	rng := rand.New(rand.NewPCG(7, 13))
 	var b strings.Builder
 	b.WriteString("disc,furnace,supplier,hold,oven_1,oven_2,oven_3,oven_4,porosity\n")
 	disc := 0
-	for _, hold := range []float64{10, 14, 18, 22, 26, 30} {
+	for _, hold := range []float64{10, 13.5, 17, 20.5, 24, 27.5} {
 		for furnace := 1; furnace <= 4; furnace++ {
 			for supplier := range 3 {
 				for range 2 {

@@ -1,0 +1,101 @@
+// Command fitfile fits one model to one data file and prints a report, or JSON.
+//
+//	go run ./examples/fitfile [-json] [-level 0.95] [-set-aside] -data FILE.csv 'MODEL TEXT'
+//
+// Refusals go to standard error, the plain sentence first, with exit status 1.
+package main
+
+import (
+	"context"
+	"errors"
+	"flag"
+	"fmt"
+	"io"
+	"os"
+	"os/signal"
+
+	"example.com/trammel"
+	"example.com/trammel/design"
+	"example.com/trammel/linfit"
+)
+
+func main() {
+	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt)
+	code := run(ctx, os.Args[1:], os.Stdout, os.Stderr)
+	stop()
+	os.Exit(code)
+}
+
+const usage = "usage: fitfile [-json] [-level 0.95] [-set-aside] -data FILE.csv 'MODEL TEXT'\n"
+
+// run does all the work and returns the exit status.
+func run(ctx context.Context, args []string, stdout, stderr io.Writer) int {
+	flags := flag.NewFlagSet("fitfile", flag.ContinueOnError)
+	flags.SetOutput(io.Discard) // refusals are worded here
+	asJSON := flags.Bool("json", false, "print JSON instead of a report")
+	level := flags.Float64("level", 0.95, "confidence level of the intervals, in (0, 1)")
+	setAside := flags.Bool("set-aside", false, "leave incomplete rows out instead of refusing them")
+	data := flags.String("data", "", "CSV file with a header line")
+	fail := func(err error) int {
+		fmt.Fprintln(stderr, err)
+		return 1
+	}
+	if err := flags.Parse(args); err != nil {
+		if errors.Is(err, flag.ErrHelp) {
+			fmt.Fprint(stdout, usage)
+			flags.SetOutput(stdout)
+			flags.PrintDefaults()
+			return 0
+		}
+		return fail(fmt.Errorf("fitfile: %w\n%s", err, usage))
+	}
+	switch {
+	case *data == "":
+		return fail(errors.New("fitfile: no data file was named; write -data FILE.csv\n" + usage))
+	case flags.NArg() == 0:
+		return fail(errors.New("fitfile: no model was given; write it in single quotes after the flags\n" + usage))
+	case flags.NArg() > 1:
+		return fail(fmt.Errorf("fitfile: one model was expected and %d arguments follow the flags; put the model in single quotes, after all flags\n%s", flags.NArg(), usage))
+	case !(*level > 0 && *level < 1):
+		return fail(fmt.Errorf("fitfile: -level is %v; it must be above 0 and below 1, such as 0.95", *level))
+	}
+	table, err := readTable(*data)
+	if err != nil {
+		return fail(err)
+	}
+	result, err := linfit.Fit(ctx, flags.Arg(0), table, &linfit.Options{SetAside: *setAside})
+	// An early-ended fit gives both a partial result and an error.
+	if result != nil {
+		if werr := write(stdout, result, *level, *asJSON); werr != nil && err == nil {
+			err = werr
+		}
+	}
+	if err != nil {
+		return fail(err)
+	}
+	return 0
+}
+
+func readTable(path string) (*design.Table, error) {
+	file, err := os.Open(path)
+	if err != nil {
+		var perr *os.PathError
+		if errors.As(err, &perr) {
+			err = perr.Err
+		}
+		return nil, fmt.Errorf("fitfile: the file %s cannot be read: %w", path, err)
+	}
+	defer file.Close()
+	return design.ReadCSV(file, nil)
+}
+
+func write(w io.Writer, result trammel.Result, level float64, asJSON bool) error {
+	summary, err := trammel.Summarize(result, &trammel.SummaryOptions{Level: level})
+	if err != nil {
+		return err
+	}
+	if asJSON {
+		return summary.WriteJSON(w)
+	}
+	return summary.WriteReport(w)
+}
