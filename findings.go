@@ -143,8 +143,12 @@ func influential(f *handover.Fit, stats *handover.RowStats) []Note {
 			"The estimates rest heavily on %s: fit once without, and compare.", rowsText(cooks, nCook, "Cook's distance %.2f"))})
 	}
 	if nOut > 0 {
+		check := "Check how they were measured."
+		if nOut == 1 {
+			check = "Check how it was measured."
+		}
 		out = append(out, Note{"far-rows", fmt.Sprintf(
-			"Far from the model, judged by the scatter of the others: %s. Check how they were measured.", rowsText(outliers, nOut, "%.1f standard deviations"))})
+			"Far from the model, judged by the scatter of the others: %s. %s", rowsText(outliers, nOut, "%.1f standard deviations"), check)})
 	}
 	if nLever > 0 {
 		out = append(out, Note{"high-leverage", fmt.Sprintf(
@@ -191,12 +195,15 @@ func nearDependencies(f *handover.Fit) []Note {
 		if len(names) < 2 {
 			continue
 		}
+		mend := "The data can hardly tell their effects apart; predictions within the data do not suffer."
+		if len(names) == 2 && names[0] == "intercept" {
+			mend += " Counting " + names[1] + " from a value within the data would separate them."
+		}
 		if len(names) > 6 {
 			names = append(names[:6:6], fmt.Sprintf("%d more", len(names)-6))
 		}
 		out = append(out, Note{"near-dependency", fmt.Sprintf(
-			"Nearly dependent (condition index %.0f): %s. The data can hardly tell their effects apart; predictions within the data do not suffer.",
-			c.Indices[k], errtext.And(names))})
+			"Nearly dependent (condition index %s): %s. %s", figure(c.Indices[k], 2), errtext.And(names), mend)})
 	}
 	return out
 }

@@ -138,7 +138,7 @@ func TestFindSoleRow(t *testing.T) {
 func TestFindNearDependency(t *testing.T) {
 	x, y := line()
 	z, v := make([]float64, len(x)), make([]float64, len(x))
-	for i, e := range scatter(len(x), 0.01) {
+	for i, e := range scatter(len(x), 0.3) {
 		z[i] = x[i] + e
 		v[i] = math.Mod(float64(7*i), 5)
 	}

@@ -28,7 +28,7 @@ func checkLevel(level float64) (float64, error) {
 // estimated, else the normal.
 type reference struct {
 	df   float64 // +Inf for the normal
-	mute bool    // an exact fit: p-values mean nothing
+	mute bool    // an exact fit: ratios to standard errors mean nothing
 }
 
 func referenceOf(f *handover.Fit) reference {
@@ -52,11 +52,11 @@ func (d reference) factor(level float64) float64 {
 	return dist.TUpperQuantile(tail, d.df)
 }
 
-// twoSided is the probability of a ratio at least as far from 0; NaN for NaN,
-// without degrees of freedom, and for an exact fit.
+// twoSided is the probability of a ratio at least as far from 0; NaN for NaN and
+// without degrees of freedom.
 func (d reference) twoSided(t float64) float64 {
 	switch {
-	case d.mute || math.IsNaN(t) || d.df <= 0:
+	case math.IsNaN(t) || d.df <= 0:
 		return math.NaN()
 	case math.IsInf(d.df, 1):
 		return 2 * dist.NormalUpper(math.Abs(t))

@@ -204,7 +204,7 @@ func (s *Summary) look(b *strings.Builder) {
 	for _, list := range [][]Note{s.Notes, s.Findings} {
 		for _, n := range list {
 			switch n.Code {
-			case noteRobust, noteZero, noteUncorrected: // said above
+			case noteRobust, noteZero, noteUncorrected, noteExact, noteSaturated: // said above
 			default:
 				item(b, n.Text)
 			}

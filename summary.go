@@ -88,7 +88,7 @@ func Summarize(r Result, opts *SummaryOptions) (*Summary, error) {
 	s.Checked = true
 	s.Findings = findings(f)
 	switch {
-	case f.Freedom <= 0 || !normalErrors(f):
+	case !normalErrors(f):
 	case len(f.Frame.Y) > mostRows:
 		s.Findings = append(s.Findings, Note{"not-checked", fmt.Sprintf(
 			"Lack of fit was not tested: there are more than %d rows to compare with each other.", mostRows)})
@@ -125,9 +125,12 @@ func (s *Summary) remarks() []Note {
 	return out
 }
 
-// Codes of notes whose matter the report has a place for.
+// Codes of notes whose matter the report has a place for. The last two are
+// written by the fitters.
 const (
 	noteRobust      = "robust-errors"
 	noteZero        = "zero-rows"
 	noteUncorrected = "uncorrected-r-squared"
+	noteExact       = "exact-fit"
+	noteSaturated   = "saturated"
 )

@@ -17,9 +17,14 @@ type Node interface {
 }
 
 // A Term is a node of the right side of a terms-form model: *Terms, *Cross,
-// *By, *Inside, *Intercept, *Name, *Call or *Category.
+// *By, *Inside, *Intercept, *Name, *Call or *Category. TermText gives the
+// canonical text by which terms are equal and which names them in tables: as
+// String, but num(…) is replaced by its arithmetic, so that num(hold^2) and the
+// square of powers(hold, 2) are both "hold^2". A comparison keeps parentheses:
+// "(furnace='F2')".
 type Term interface {
 	Node
+	TermText() string
 	term()
 }
 

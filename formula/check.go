@@ -124,6 +124,9 @@ func (c *checker) right(m *Model) *Error {
 			}
 		}
 	}
+	if len(c.explained) > 1 {
+		nodes = nil // a ratio or a difference may be explained by its parts
+	}
 	var e *Error
 	for _, n := range nodes {
 		eachName(n, func(n *Name) {
@@ -173,24 +176,7 @@ func (c *checker) term(t Term) *Error {
 		return c.factors(t.Factors, true)
 	case *By:
 		return c.factors(t.Factors, true)
-	case *Inside:
-		for i, f := range t.Factors {
-			if n := numericTerm(f); n != nil {
-				e := refuse(codeInsideOperand, n.Span(), "inside nests a category in categories", "%s is numeric and cannot be nested", shorten(n.String()))
-				if name, ok := n.(*Name); ok {
-					e.pasting("cat(" + name.String() + ")").naming(name.Name)
-				}
-				return e
-			}
-			switch f.(type) {
-			case *Intercept:
-				return refuse(codeInsideOperand, f.Span(), "inside nests a category in categories", "the intercept is no category")
-			case *Terms, *Cross:
-				if i > 0 {
-					return refuse(codeInsideOperand, f.Span(), "join categories by by: cat(h) inside (cat(a) by cat(b))", "the right side of inside is one category or categories joined by by")
-				}
-			}
-		}
+	case *Inside: // what can be nested in what is told by package design
 		return c.factors(t.Factors, false)
 	case *Call:
 		return c.call(t)
@@ -210,7 +196,7 @@ func (c *checker) factors(factors []Term, numeric bool) *Error {
 		if n == nil || !numeric {
 			continue
 		}
-		text := TermText(n)
+		text := n.TermText()
 		if seen[text] {
 			mend := "powers(" + text + ", 2)"
 			return refuse(codeNumericByItself, f.Span(), "write "+mend, "the numeric term %s stands beside itself", shorten(text))

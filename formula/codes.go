@@ -108,11 +108,6 @@ const (
 	//	model: y = k*cat(m) fitting k
 	codeFunctionPlace Code = "function-place"
 
-	// codeInsideOperand: an operand of inside is no category.
-	//
-	//	model: y ~ x inside cat(m)
-	codeInsideOperand Code = "inside-operand"
-
 	// codeInvalidUTF8: the text is not valid UTF-8.
 	//
 	//	model: y ~ x\xff
@@ -266,7 +261,6 @@ func Codes() []Code {
 		codeFittingMissing,
 		codeForeignOperator,
 		codeFunctionPlace,
-		codeInsideOperand,
 		codeInvalidUTF8,
 		codeKnownPlace,
 		codeLevelPlace,

@@ -3,7 +3,7 @@
 // numbers are the business of package design.
 //
 // The way of a model is declare, compile, fit, ask: [Parse] gives a [Model],
-// design.Prepare compiles it against a table, a fitter such as linfit.Fit gives
+// design.Compile compiles it against a table, a fitter such as linfit.Fit gives
 // a trammel.Result, and the functions of package trammel answer questions about
 // it. Most programs hand the text straight to a fitter and meet this package
 // only in its errors.

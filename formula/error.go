@@ -50,7 +50,9 @@ func refuse(code Code, at Span, hint, format string, args ...any) *Error {
 // pasting completes a refusal by the text to put in place of its span.
 func (e *Error) pasting(text string) *Error {
 	e.paste = text
-	e.Hint = "write " + text
+	if len(text) <= maxMend {
+		e.Hint = "write " + text
+	}
 	return e
 }
 

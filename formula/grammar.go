@@ -37,10 +37,11 @@ type paramSyntax struct {
 }
 
 type boundsSyntax struct {
-	Above signedLiteral `parser:"  '>':Operator @@"`
-	Below signedLiteral `parser:"| '<':Operator @@"`
-	Low   signedLiteral `parser:"| 'in':Keyword '(':Operator @@"`
-	High  signedLiteral `parser:"  ',':Operator @@ ')':Operator"`
+	Tokens []lexer.Token // all of them, from participle
+	Above  signedLiteral `parser:"  '>':Operator @@"`
+	Below  signedLiteral `parser:"| '<':Operator @@"`
+	Low    signedLiteral `parser:"| 'in':Keyword '(':Operator @@"`
+	High   signedLiteral `parser:"  ',':Operator @@ ')':Operator"`
 }
 
 type coefSyntax struct {
@@ -82,6 +83,7 @@ func (n *headName) head() *headName           { return n }
 func build[T any]() *participle.Parser[T] {
 	return participle.MustBuild[T](
 		participle.Lexer(definition{}),
+		participle.UseLookahead(0), // the next token decides everywhere: what is begun must be completed
 		piece(func(s *stream) expression { return s.outerSum() }),
 		piece(func(s *stream) termSum { return s.terms() }),
 		piece(func(s *stream) errorModel { return s.errors() }),
@@ -108,27 +110,34 @@ var (
 	coefParser  = build[coefSyntax]()
 )
 
-// parse checks the limits, then reads text by the parser.
-func parse[T any](p *participle.Parser[T], text string, brackets bool) (*T, *Error) {
+// parse checks the limits, then reads text by the parser. It also tells where
+// the last token ends.
+func parse[T any](p *participle.Parser[T], text string, brackets bool) (*T, int, *Error) {
 	if len(text) > MaxText {
-		return nil, refuse(codeTooLong, Span{}, "split it into several models", "the text has %d bytes; at most %d are read", len(text), MaxText)
+		return nil, 0, refuse(codeTooLong, Span{}, "split it into several models", "the text has %d bytes; at most %d are read", len(text), MaxText)
 	}
 	if at := invalidUTF8(text); at >= 0 {
-		return nil, refuse(codeInvalidUTF8, Span{at, at + 1}, "save the text as UTF-8", "the text is not valid UTF-8 here")
+		return nil, 0, refuse(codeInvalidUTF8, Span{at, at + 1}, "save the text as UTF-8", "the text is not valid UTF-8 here")
 	}
 	tokens, bad := scan(text)
+	if len(tokens) == 1 {
+		if brackets {
+			return nil, 0, refuse(codeSyntax, Span{}, "write a name such as hold by furnace='F2'", "the text is empty")
+		}
+		return nil, 0, refuse(codeSyntax, Span{}, "write a model such as porosity ~ hold", "the text is empty")
+	}
 	if e := checkNesting(tokens); e != nil {
-		return nil, e
+		return nil, 0, e
 	}
 	lex, err := lexer.Upgrade(&replay{tokens})
 	if err != nil {
-		return nil, &Error{Code: codeSyntax, Message: "the text cannot be read", Err: err}
+		return nil, 0, &Error{Code: codeSyntax, Message: "the text cannot be read", Err: err}
 	}
 	syntax, err := p.ParseFromLexer(lex)
 	if err != nil {
-		return nil, explain(err, tokens, bad, brackets)
+		return nil, 0, explain(err, tokens, bad, brackets)
 	}
-	return syntax, nil
+	return syntax, spanOf(tokens[len(tokens)-2]).End, nil
 }
 
 // explain turns what participle returns into a refusal of ours: the scanner's
@@ -152,13 +161,22 @@ func explain(err error, tokens []lexer.Token, bad map[int]*Error, brackets bool)
 	}
 	var before lexer.Token
 	sides := 0 // signs between the sides of a model read so far
+	params := false
+	open := 0 // parentheses; those that stream reads are closed, or it has refused
 	for _, b := range tokens {
 		if b.Pos.Offset >= t.Pos.Offset {
 			break
 		}
 		before = b
-		if b.Value == "~" || b.Value == "=" {
+		switch b.Value {
+		case "~", "=":
 			sides++
+		case "fitting":
+			params = true
+		case "(":
+			open++
+		case ")":
+			open--
 		}
 	}
 	what := ""
@@ -170,10 +188,21 @@ func explain(err error, tokens []lexer.Token, bad map[int]*Error, brackets bool)
 		}
 	case before.Value == "out":
 		what = "of"
+	case before.Value == "in":
+		what = "("
+	case open > 0 && t.Value == ")":
+		what = "a comma and the upper limit"
+	case open > 0:
+		what = "a comma or )"
 	case sides == 0:
 		what = "~ or ="
 	case t.Type == lexer.EOF:
 		what = "a number"
+	}
+	if params && what == "" {
+		if e := unexpectedInParams(before, t); e != nil {
+			return e
+		}
 	}
 	return unexpected(before, t, what, nil)
 }

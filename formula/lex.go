@@ -44,7 +44,7 @@ var foreign = []struct{ sign, hint string }{
 	{"|", "write inside for nesting, or by for one slope per level: x by cat(m)"},
 	{"&", "multiply comparisons: num((x > 1)*(z > 2))"},
 	{"!", "compare with false: num(open = false)"},
-	{"%", "there is no % here; divide by 100"},
+	{"%", "divide by 100 for a percentage; there is no remainder of a division"},
 	{"{", "write ( and ) for grouping"},
 	{"}", "write ( and ) for grouping"},
 	{";", "separate arguments by a comma and clauses by a space"},
@@ -102,7 +102,7 @@ func scanOne(text string, i int) (lexer.TokenType, int, *Error) {
 		return quoted(rest, i, tokenQuoted)
 	case r == '\'':
 		return quoted(rest, i, tokenLevel)
-	case r >= '0' && r <= '9', r == '.' && len(rest) > 1 && rest[1] >= '0' && rest[1] <= '9':
+	case r >= '0' && r <= '9', r == '.' && len(rest) > 1 && rest[1] >= '0' && rest[1] <= '9' && !endsName(text[:i]):
 		return number(rest, i)
 	case isNameStart(r):
 		n := strings.IndexFunc(rest, func(r rune) bool { return !isNamePart(r) })
@@ -136,6 +136,12 @@ func scanOne(text string, i int) (lexer.TokenType, int, *Error) {
 	}
 	return 0, size, refuse(codeBadCharacter, at, "put a column name with this character in double quotes",
 		"the character %c has no meaning here", r)
+}
+
+// endsName tells that a name ends where the text does: oven.1 is meant as one.
+func endsName(text string) bool {
+	r, _ := utf8.DecodeLastRuneInString(text)
+	return isNamePart(r)
 }
 
 // isHidden recognises control and invisible format characters.

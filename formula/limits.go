@@ -18,6 +18,7 @@ const (
 	maxOrder    = 1000 // upto
 	maxLiteral  = 400  // bytes of a number; strconv fails beyond 800
 	maxSentence = 60   // characters of a piece of text quoted in a sentence
+	maxMend     = 400  // bytes of a mend that a hint still shows
 )
 
 // checkNesting counts on tokens how deep a parser would descend: open

@@ -69,6 +69,30 @@ func (n *Part) Span() Span { return n.Pos }
 // Span tells where the node stands in the text it was parsed from.
 func (n *Equal) Span() Span { return n.Pos }
 
+// TermText gives the text by which terms are equal, see [Term].
+func (n *Terms) TermText() string { return termText(n) }
+
+// TermText gives the text by which terms are equal, see [Term].
+func (n *Cross) TermText() string { return termText(n) }
+
+// TermText gives the text by which terms are equal, see [Term].
+func (n *By) TermText() string { return termText(n) }
+
+// TermText gives the text by which terms are equal, see [Term].
+func (n *Inside) TermText() string { return termText(n) }
+
+// TermText gives the text by which terms are equal, see [Term].
+func (n *Intercept) TermText() string { return termText(n) }
+
+// TermText gives the text by which terms are equal, see [Term].
+func (n *Name) TermText() string { return termText(n) }
+
+// TermText gives the text by which terms are equal, see [Term].
+func (n *Call) TermText() string { return termText(n) }
+
+// TermText gives the text by which terms are equal, see [Term].
+func (n *Category) TermText() string { return termText(n) }
+
 func (*Model) node()     {}
 func (*Response) node()  {}
 func (*Terms) node()     {}

@@ -1,9 +1,6 @@
 package formula
 
-import (
-	"strings"
-	"unicode/utf8"
-)
+import "unicode/utf8"
 
 // Parse turns the text of one model into its tree. What breaks the language or
 // one of its limits is refused by an [*Error]; whatever needs data to be told
@@ -21,7 +18,7 @@ func Parse(text string) (*Model, error) {
 // ParseCoef turns the name of a coefficient, as results print it, into its
 // tree. Its String gives the same name back. Refusals are [*Error] values.
 func ParseCoef(text string) (*Coef, error) {
-	syntax, e := parse(coefParser, text, true)
+	syntax, _, e := parse(coefParser, text, true)
 	if e != nil {
 		e.Text = text
 		return nil, e
@@ -30,7 +27,7 @@ func ParseCoef(text string) (*Coef, error) {
 }
 
 func parseModel(text string) (*Model, *Error) {
-	syntax, e := parse(modelParser, text, false)
+	syntax, end, e := parse(modelParser, text, false)
 	if e != nil {
 		return nil, e
 	}
@@ -58,7 +55,7 @@ func parseModel(text string) (*Model, *Error) {
 			return nil, e
 		}
 	}
-	m.Pos = Span{m.Response.Pos.Start, len(strings.TrimRight(text, " \t\r\n"))}
+	m.Pos = Span{m.Response.Pos.Start, end}
 	if e := check(m, seen); e != nil {
 		return nil, e
 	}
@@ -122,7 +119,7 @@ func (p *paramSyntax) param() (*Param, *Error) {
 		n.Low, n.High = value(b.Above), value(b.Below)
 		if b.Low != nil {
 			n.Low, n.High = value(b.Low), value(b.High)
-			n.Pos.End++ // the closing parenthesis; spaces before it are rare
+			n.Pos.End = spanOf(b.Tokens[len(b.Tokens)-1]).End
 		}
 	}
 	n.Start = value(p.Start)
@@ -153,19 +150,19 @@ func (n *Param) check() *Error {
 		return nil
 	}
 	outside := func(where string) *Error {
-		return refuse(codeStartOutside, n.Pos, "start within", "the start value of %s, %s, is not %s", name, FormatNumber(*n.Start), where).naming(n.Name.Name)
+		return refuse(codeStartOutside, n.Pos, "give a start value there", "%s must be %s, and its start value is %s", name, where, FormatNumber(*n.Start)).naming(n.Name.Name)
 	}
 	switch s := *n.Start; {
 	case n.Low != nil && s < *n.Low:
-		return outside("above the limit " + FormatNumber(*n.Low))
+		return outside("at least " + FormatNumber(*n.Low))
 	case n.High != nil && s > *n.High:
-		return outside("below the limit " + FormatNumber(*n.High))
+		return outside("at most " + FormatNumber(*n.High))
 	case n.ParLink == "log" && s <= 0:
 		return outside("greater than 0, as log needs")
 	case n.ParLink == "logit" && (s <= 0 || s >= 1):
 		return outside("between 0 and 1, as logit needs")
 	case n.ParLink == "reciprocal" && s == 0:
-		return outside("other than 0, as reciprocal needs")
+		return outside("different from 0, as reciprocal needs")
 	}
 	return nil
 }

@@ -75,11 +75,7 @@ func (n *Part) String() string { return text(n) }
 // String prints canonical text.
 func (n *Equal) String() string { return text(n) }
 
-// TermText gives the canonical text by which terms are equal and which names
-// them in tables: as String, but num(…) is replaced by its arithmetic, so that
-// num(hold^2) and the square of powers(hold, 2) are both "hold^2". A comparison
-// keeps parentheses: "(furnace='F2')".
-func TermText(t Term) string {
+func termText(t Term) string {
 	p := printer{bare: true}
 	p.node(t)
 	return p.String()
@@ -173,14 +169,14 @@ func (p *printer) node(n Node) {
 	case *Model:
 		p.model(n)
 	case *Response:
-		p.node(n.Value)
+		p.within(n.Value, bindSum)
 		if n.OutOf != nil {
 			p.put(" out of ")
-			p.node(n.OutOf)
+			p.within(n.OutOf, bindSum)
 		}
 		if n.Per != nil {
 			p.put(" per ")
-			p.node(n.Per)
+			p.within(n.Per, bindSum)
 		}
 	case *Terms:
 		p.terms(n)

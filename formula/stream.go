@@ -102,6 +102,40 @@ var (
 	laterWords  = []string{"out", "per", "link", "start", "against", "in", "others", "of"}
 )
 
+// belongs tells where words stand that are easily misplaced.
+var belongs = map[string]string{
+	"link":    "it follows a family, as in as gamma link log",
+	"start":   "it belongs to a parameter after fitting, as in k start 0.3",
+	"in":      "it lists levels inside cat, as in cat(grade in ('low', 'high')), or limits of a parameter",
+	"against": "it stands inside cat, as in cat(furnace against 'F2')",
+	"others":  "it ends a list of levels, as in cat(grade in ('low', others))",
+	"out":     "it belongs to the response, as in rejects out of inspected ~ hold",
+	"of":      "it belongs to the response, as in rejects out of inspected ~ hold",
+	"per":     "it belongs to the response, as in inclusions per area ~ hold",
+}
+
+// unexpectedInParams words the refusal of a token behind a declaration, where
+// limits and commas are what is usually meant; nil when neither is.
+func unexpectedInParams(before, t lexer.Token) *Error {
+	at := spanOf(t)
+	switch {
+	case (t.Value == ">=" || t.Value == "<=") && before.Type != tokenNumber:
+		return refuse(codeSyntax, at, "", "limits are closed and written by > or <, not %s", t.Value).pasting(t.Value[:1])
+	case isComparison(t):
+		return refuse(codeSyntax, at, "write two limits as k in (0, 5)", "a parameter has one limit by > or <, before its start value")
+	case t.Type == tokenName || t.Type == tokenQuoted:
+		near, ok := errtext.Nearest(t.Value, slices.Concat(clauseWords, []string{"by", "in", "start"}))
+		if !ok && !reserved[strings.ToLower(t.Value)] {
+			return refuse(codeSyntax, at, "", "a comma was expected between the parameters %s and %s", shorten(before.Value), shorten(t.Value)).
+				pasting(", " + t.Value)
+		}
+		if ok && !reserved[strings.ToLower(t.Value)] {
+			return refuse(codeSyntax, at, "", "a comma or a clause was expected after %s, not %s", shorten(before.Value), shorten(t.Value)).pasting(near)
+		}
+	}
+	return nil
+}
+
 // unexpected words the refusal of a token: what was expected ("" when nothing
 // more fits), and words that would fit, for near misses.
 func unexpected(before, t lexer.Token, what string, words []string) *Error {
@@ -114,9 +148,6 @@ func unexpected(before, t lexer.Token, what string, words []string) *Error {
 		at = Span{spanOf(before).End, spanOf(before).End}
 		if what == "" {
 			what = "more"
-		}
-		if where == "" {
-			return refuse(codeSyntax, at, "write a model such as y ~ x", "the text is empty; %s was expected", what)
 		}
 		return refuse(codeSyntax, at, "", "the text ends where %s was expected%s", what, where)
 	}
@@ -132,8 +163,12 @@ func unexpected(before, t lexer.Token, what string, words []string) *Error {
 	}
 	if what != "" {
 		if t.Type == tokenKeyword && (strings.HasSuffix(what, "name") || what == "a term" || what == "a number, a column or a function") {
-			return refuse(codeReservedWord, at, "", "%s is a reserved word; a column with this name is quoted", t.Value).
-				pasting(QuoteName(t.Value)).naming(t.Value)
+			e := refuse(codeReservedWord, at, "a column with this name is written "+QuoteName(t.Value),
+				"%s was expected%s, not the reserved word %s", what, where, t.Value).naming(t.Value)
+			if !slices.Contains(clauseWords, t.Value) {
+				e.pasting(QuoteName(t.Value))
+			}
+			return e
 		}
 		e := refuse(codeSyntax, at, "", "%s was expected%s, not %s", what, where, shorten(t.Value))
 		if near, ok := errtext.Nearest(t.Value, words); ok && t.Type == tokenName {
@@ -147,7 +182,7 @@ func unexpected(before, t lexer.Token, what string, words []string) *Error {
 	case t.Value == ",":
 		return refuse(codeSyntax, at, "write + between terms", "a comma stands only between arguments and between declared parameters")
 	case t.Value == "~" || t.Value == "=":
-		return refuse(codeSyntax, at, "a comparison stands inside parentheses or an argument", "%s cannot stand a second time", t.Value)
+		return refuse(codeSyntax, at, "a text holds one model; a comparison stands inside parentheses or an argument", "%s cannot stand a second time", t.Value)
 	case t.Value == "(" && (before.Type == tokenNumber || before.Value == ")"):
 		return refuse(codeSyntax, at, "write * for a product", "an operator was expected%s", where)
 	case t.Value == "[":
@@ -166,7 +201,11 @@ func unexpected(before, t lexer.Token, what string, words []string) *Error {
 		}
 		return refuse(codeSyntax, at, hint, "an operator or a clause was expected%s, not %s", where, shorten(t.Value))
 	case t.Type == tokenKeyword:
-		return refuse(codeSyntax, at, "a column with this name is quoted: "+QuoteName(t.Value), "the word %s cannot stand here%s", t.Value, where)
+		hint := belongs[t.Value]
+		if hint == "" {
+			hint = "a column with this name is quoted: " + QuoteName(t.Value)
+		}
+		return refuse(codeSyntax, at, hint, "the word %s cannot stand here%s", t.Value, where)
 	}
 	return refuse(codeSyntax, at, "", "%s cannot stand here%s", shorten(t.Value), where)
 }

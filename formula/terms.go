@@ -61,9 +61,15 @@ func (s *stream) arithmetic(mark lexer.Checkpoint, sign lexer.Token) {
 	} else {
 		x = s.product()
 	}
+	some := false
 	switch n, isNumber := x.(*Number); {
 	case s.err != nil:
 	case !isNumber:
+		eachName(x, func(*Name) { some = true })
+		if !some {
+			e.Hint = "write intercept for the constant; every term has a coefficient of its own"
+			break
+		}
 		e.Span = Span{start, s.end}
 		e.pasting("num(" + x.String() + ")")
 	case n.Value == 1:
@@ -170,6 +176,9 @@ func (s *stream) category(at Span) *Category {
 		c.Against = s.base()
 	}
 	if t := s.peek(); t.Type != lexer.EOF && t.Value != ")" {
+		if t.Value == "(" {
+			s.fail(refuse(codeSyntax, spanOf(t), "add a column to the data for a category from arithmetic", "cat takes column names, not functions"))
+		}
 		if c.Against == nil && isComparison(t) {
 			s.fail(refuse(codeSyntax, spanOf(t), "write num(furnace = 'F2') for an indicator", "cat takes column names, not comparisons"))
 		}

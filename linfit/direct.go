@@ -23,6 +23,7 @@ type direct struct {
 	kind           Robust
 	clusters       *clusters
 	workers        int
+	found          solved
 
 	mu      sync.Mutex // guards what follows: a Factor uses its own scratch
 	problem lsq.Problem
@@ -57,7 +58,8 @@ func solveDirect(r *run, c *clusters) (*solved, error) {
 	if err := r.step("solved", n); err != nil {
 		return nil, err
 	}
-	s := &solved{path: "refined QR", passes: e.sol.Passes, b: e.sol.B, rss: e.sol.RSS, engine: e}
+	s := &e.found
+	*s = solved{path: "refined QR", passes: e.sol.Passes, b: e.sol.B, rss: e.sol.RSS, engine: e}
 	s.corrected = hasIntercept(r.form) || spansConstant(e.factor, n, e.roots, e.rootsLo)
 	s.tss = totals(r.frame, s.corrected)
 	s.size = sizeOf(r.frame)
@@ -279,14 +281,19 @@ func (e *direct) MeanTo(mean, grad []float64, m *design.Matrix, known []float64,
 }
 
 func (e *direct) LeverageTo(dst []float64, m *design.Matrix, from, to int) {
-	e.mu.Lock()
-	e.factor.Prepare()
-	e.mu.Unlock()
-	p := len(e.form.Cols)
-	scratch := make([]float64, 2*p+e.factor.QuadScratch())
+	leveragesTo(dst, e.factor, &e.mu, m, from, to)
+}
+
+// leveragesTo writes x'(X'WX)^-1 x for rows [from, to) of m.
+func leveragesTo(dst []float64, f *lsq.Factor, mu *sync.Mutex, m *design.Matrix, from, to int) {
+	mu.Lock()
+	f.Prepare()
+	mu.Unlock()
+	_, p := m.Dims()
+	scratch := make([]float64, 2*p+f.QuadScratch())
 	x, lo := scratch[:p], scratch[p:2*p]
 	for i := from; i < to; i++ {
 		m.Form().RowTo(x, lo, i)
-		dst[i-from] = e.factor.QuadForm(x, lo, scratch[2*p:])
+		dst[i-from] = f.QuadForm(x, lo, scratch[2*p:])
 	}
 }

@@ -50,7 +50,7 @@ func Fit(ctx context.Context, text string, t *design.Table, opts *Options) (tram
 // FitFrame fits the model of a prepared frame to its rows, as Fit does.
 func FitFrame(ctx context.Context, f *design.Frame, opts *Options) (trammel.Result, error) {
 	if opts == nil {
-		opts = &Options{}
+		opts = &Options{} // stays on the stack
 	}
 	if err := opts.check(); err != nil {
 		return nil, err
@@ -84,7 +84,7 @@ func suited(m *formula.Model) error {
 // A run is what the parts of one fit share.
 type run struct {
 	ctx     context.Context
-	opts    *Options
+	opts    Options
 	frame   *design.Frame
 	form    *factored.Form
 	workers int
@@ -109,7 +109,7 @@ func cancelled(cause error) error {
 }
 
 func fit(ctx context.Context, f *design.Frame, c *clusters, opts *Options) (trammel.Result, error) {
-	r := &run{ctx: ctx, opts: opts, frame: f, form: f.Matrix.Form(), workers: opts.Workers}
+	r := &run{ctx: ctx, opts: *opts, frame: f, form: f.Matrix.Form(), workers: opts.Workers}
 	if r.workers == 0 {
 		r.workers = runtime.GOMAXPROCS(0)
 	}
@@ -175,7 +175,15 @@ type engine interface {
 // pathElements is the size of the expanded matrix up to which it is formed.
 const pathElements = 4_000_000
 
-func solve(r *run, c *clusters) (*solved, error) { return solveDirect(r, c) }
+// solve chooses the numeric path.
+func solve(r *run, c *clusters) (*solved, error) {
+	if n, p := r.form.N, len(r.form.Cols); n > pathElements/max(p, 1) && streamable(r.form) {
+		if s, err := solveStreamed(r, c); s != nil || err != nil {
+			return s, err
+		}
+	}
+	return solveDirect(r, c)
+}
 
 // deficient is the refusal of dependent columns.
 func deficient(f *design.Frame) error {

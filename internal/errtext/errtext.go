@@ -7,6 +7,7 @@ package errtext
 import (
 	"strconv"
 	"strings"
+	"unicode"
 	"unicode/utf8"
 )
 
@@ -87,7 +88,7 @@ func snippet(text string, start, end int) string {
 		w := 1
 		if i < len(runes) {
 			r := runes[i]
-			if r == '\t' || r < ' ' || r == utf8.RuneError {
+			if r == utf8.RuneError || unicode.In(r, unicode.Cc, unicode.Cf, unicode.Zl, unicode.Zp) {
 				r = ' '
 			}
 			src.WriteRune(r)

@@ -77,3 +77,42 @@ func TestNearest(t *testing.T) {
 		}
 	}
 }
+
+// TestPosition counts lines and characters from 1 and never leaves the text.
+func TestPosition(t *testing.T) {
+	const text = "a\ngröße + x\r\n温度"
+	for _, c := range []struct{ offset, line, col int }{
+		{-1, 1, 1}, {0, 1, 1}, {1, 1, 2}, {2, 2, 1}, {strings.Index(text, "+"), 2, 7}, {strings.Index(text, "度"), 3, 2}, {len(text), 3, 3}, {len(text) + 9, 3, 3},
+	} {
+		if line, col := Position(text, c.offset); line != c.line || col != c.col {
+			t.Errorf("offset %d is %d:%d, want %d:%d", c.offset, line, col, c.line, c.col)
+		}
+	}
+}
+
+// TestHiddenCharacters: what cannot be seen, or turns the direction of writing,
+// is shown as a space, so that the marks stay under the place.
+func TestHiddenCharacters(t *testing.T) {
+	for _, hidden := range []string{"\u202e", "\u200b", "\x00", "\x1b", "\u2028", "\ufeff", "\xff"} {
+		text := "y ~ " + hidden + "x"
+		want := "formula: 1:5: m\n    y ~  x\n        ^"
+		if got := Format("formula", text, 4, 4+len(hidden), "m", ""); got != want {
+			t.Errorf("%q:\ngot  %q\nwant %q", hidden, got, want)
+		}
+	}
+}
+
+// TestNearestLimits: one letter in three may be wrong, and one in the shortest words.
+func TestNearestLimits(t *testing.T) {
+	for _, c := range []struct {
+		word, candidate string
+		want            bool
+	}{
+		{"lgo", "log", true}, {"lxx", "log", false}, {"poison", "poisson", true}, {"ab", "ac", false}, {"AB", "ab", true},
+		{"furnaec", "furnace", true}, {"supplierxxxx", "supplier", true}, {"supplierxxxxx", "supplier", false}, {strings.Repeat("x", 201), strings.Repeat("x", 200), false},
+	} {
+		if _, ok := Nearest(c.word, []string{c.candidate}); ok != c.want {
+			t.Errorf("Nearest(%q, %q) = %v, want %v", c.word, c.candidate, ok, c.want)
+		}
+	}
+}

@@ -10,9 +10,9 @@ import "example.com/trammel/internal/dd"
 // immutable and may be shared between goroutines.
 type Form struct {
 	N    int
-	Nums []Num   // numeric columns: products of the terms' numeric factors
-	Cats []Cat   // level numbers of categories
-	Cols []Col   // the columns of the matrix
+	Nums []Num // numeric columns: products of the terms' numeric factors
+	Cats []Cat // level numbers of categories
+	Cols []Col // the columns of the matrix
 }
 
 // A Num is one numeric column of N rows, Hi + Lo. Lo is nil when all its low

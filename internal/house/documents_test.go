@@ -1,11 +1,19 @@
 package house
 
 import (
+	"bytes"
+	"context"
+	"encoding/json"
 	"os"
 	"path/filepath"
 	"regexp"
+	"slices"
 	"strings"
 	"testing"
+
+	"example.com/trammel"
+	"example.com/trammel/design"
+	"example.com/trammel/linfit"
 )
 
 func read(t *testing.T, path string) string {
@@ -92,4 +100,45 @@ func allTests(t *testing.T) map[string]bool {
 		t.Fatal(err)
 	}
 	return out
+}
+
+// summaryKeys lists the keys of a summary's JSON, those of its lists as
+// "coefficients.estimate".
+func summaryKeys(t *testing.T) []string {
+	t.Helper()
+	table, err := design.ReadCSV(strings.NewReader(read(t, "testdata/furnaces.csv")), nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	// A model that fills every list: derived effects and a note.
+	r, err := linfit.Fit(context.Background(), "porosity ~ cat(furnace against mean) + disc", table, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	s, err := trammel.Summarize(r, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var b bytes.Buffer
+	if err := s.WriteJSON(&b); err != nil {
+		t.Fatal(err)
+	}
+	var all map[string]any
+	if err := json.Unmarshal(b.Bytes(), &all); err != nil {
+		t.Fatal(err)
+	}
+	var keys []string
+	for k, v := range all {
+		keys = append(keys, k)
+		if list, ok := v.([]any); ok && len(list) > 0 {
+			v = list[0]
+		}
+		if inner, ok := v.(map[string]any); ok {
+			for q := range inner {
+				keys = append(keys, k+"."+q)
+			}
+		}
+	}
+	slices.Sort(keys)
+	return keys
 }

@@ -5,6 +5,7 @@ import (
 	"math/rand/v2"
 	"testing"
 
+	"gonum.org/v1/gonum/floats"
 	"gonum.org/v1/gonum/mat"
 )
 
@@ -110,6 +111,13 @@ func BenchmarkParts(b *testing.B) {
 			b.SetBytes(int64(8 * s.n * s.p))
 			for b.Loop() {
 				f.augmented()
+			}
+		})
+		b.Run(name+"/read", func(b *testing.B) {
+			// What the memory allows: reading X once.
+			b.SetBytes(int64(8 * s.n * s.p))
+			for b.Loop() {
+				floats.Sum(pr.X)
 			}
 		})
 		b.Run(name+"/whiten", func(b *testing.B) {

@@ -50,7 +50,7 @@ func Factorize(p *Problem, ws *Workspace) *Factor {
 	}
 	f.each(c, (*Factor).scaleColumn)
 	for j, s := range f.scale {
-		if s > 0x1p400 || s < 0x1p-400 {
+		if s > farScale || s < 1/farScale {
 			f.keepScaled(j)
 		}
 	}

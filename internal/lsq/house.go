@@ -3,6 +3,7 @@ package lsq
 import (
 	"math"
 
+	"example.com/trammel/internal/dd"
 	"gonum.org/v1/gonum/floats"
 )
 
@@ -11,11 +12,25 @@ import (
 // while norms of such vectors would suffer from underflow.
 const tinySquare = 1e-280
 
+// dot returns Σ x[i] y[i]. Long sums are taken in pieces: the errors of a
+// running sum of many like terms, as in a column of ones, all point one way.
+func dot(x, y []float64) float64 {
+	const piece = 128
+	var sum, errs float64
+	for len(x) > piece {
+		s, e := dd.TwoSum(sum, floats.Dot(x[:piece], y[:piece]))
+		sum = s
+		errs += e
+		x, y = x[piece:], y[piece:]
+	}
+	return sum + (errs + floats.Dot(x, y))
+}
+
 // makeReflector turns x into the Householder vector v (v[0] = 1 implied) with
 // (I - tau v v') x = beta e₁, and stores beta in x[0]. ss is Σ x[1:]².
 func makeReflector(x []float64) (tau float64) {
 	alpha := x[0]
-	ss := floats.Dot(x[1:], x[1:])
+	ss := dot(x[1:], x[1:])
 	if ss <= tinySquare {
 		return 0
 	}
@@ -33,7 +48,7 @@ func applyReflection(v []float64, tau float64, c []float64) {
 	if tau == 0 {
 		return
 	}
-	w := tau * (c[0] + floats.Dot(v[1:], c[1:]))
+	w := tau * (c[0] + dot(v[1:], c[1:]))
 	c[0] -= w
 	floats.AddScaled(c[1:], -w, v[1:])
 }

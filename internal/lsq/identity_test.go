@@ -241,3 +241,61 @@ func BenchmarkIdentities(b *testing.B) {
 		})
 	}
 }
+
+// A coefficient near a fraction is not that fraction.
+func TestNearlyFraction(t *testing.T) {
+	pr := randomProblem(6, 40, 3)
+	n := pr.N
+	const c = 0.5 + 1e-10
+	for i := range n {
+		pr.X[2*n+i] = c*pr.X[i] + pr.X[n+i]
+	}
+	got := Identities(pr)
+	if len(got) != 1 || got[0].Exact || math.Abs(got[0].Coefs[0]-c) > 1e-15 || math.Abs(got[0].Coefs[1]-1) > 1e-15 {
+		t.Errorf("identities %+v, want %g and 1, not exact", got, c)
+	}
+}
+
+// A small addend leaves room for several fractions; the right one is found.
+func TestFractionOfSmallAddend(t *testing.T) {
+	pr := integerProblem(rand.New(rand.NewPCG(1, 21)), 40, 3)
+	n := pr.N
+	for i := range n {
+		pr.X[n+i] = math.Ldexp(7*pr.X[n+i], -12)
+		pr.X[2*n+i] = 1e6*pr.X[i] + pr.X[n+i]/7*2
+	}
+	want := []Identity{{Column: 2, Coefs: []float64{1e6, 2.0 / 7, 0}, Exact: true}}
+	if got := Identities(pr); !reflect.DeepEqual(got, want) {
+		t.Errorf("identities %+v, want %+v", got, want)
+	}
+}
+
+// W. Kahan's matrix ("Numerical linear algebra", Canad. Math. Bull. 9 (1966)
+// 757-801) keeps its last pivot far above its smallest singular value, which
+// the reverse order of columns shows. The verdict of the pivoting stands: one
+// planted copy is one identity, in any order.
+func TestIdentitiesOfKahanMatrix(t *testing.T) {
+	const n, c = 30, 0.9
+	s := math.Sqrt(1 - c*c)
+	pr := &Problem{N: n, P: n + 1, X: make([]float64, n*(n+1))}
+	for j := range n {
+		at := (n - j) % n // reverse order but for the first, which all ties favour
+		col := pr.X[at*n : (at+1)*n]
+		for i := range j {
+			col[i] = -c * math.Pow(s, float64(i))
+		}
+		col[j] = 1.001 * math.Pow(s, float64(j)) // breaks ties in favour of j
+	}
+	copy(pr.X[n*n:], pr.X[3*n:4*n])
+	f := Factorize(pr, nil)
+	if f.Rank() != n {
+		t.Fatalf("rank %d, want %d; pivots %v", f.Rank(), n, f.Pivots())
+	}
+	got := Identities(pr)
+	if len(got) != 1 {
+		t.Fatalf("%d identities, want 1", len(got))
+	}
+	if id := got[0]; id.Column != n || id.Coefs[3] != 1 || !id.Exact {
+		t.Errorf("identity %+v, want column 3", id)
+	}
+}

@@ -20,7 +20,8 @@ type whitened struct {
 	l     []float64 // k×k lower triangle, row-major
 	v     []float64 // k×k upper triangle, row-major
 	b     []float64 // k·block per worker: one block of A S, column-major
-	g, lo []float64 // k×k per chunk: sums for G as hi + lo; then G in the first k×k
+	g     []float64 // k×k per chunk: sums for G; then G in the first k×k
+	lo    []float64 // k×k: errors of the merging
 	h     []float64 // where LeveragesTo writes
 }
 
@@ -36,10 +37,10 @@ func (f *Factor) invert() *whitened {
 	}
 	k := f.rank
 	chunks := f.chunks()
-	f.ws.white = sized(f.ws.white, (3+2*chunks)*k*k+k*f.block*f.workers)
+	f.ws.white = sized(f.ws.white, (4+chunks)*k*k+k*f.block*f.workers)
 	a := arena{f.ws.white}
 	w.s, w.l, w.v = a.take(k*k), a.take(k*k), a.take(k*k)
-	w.g, w.lo = a.take(chunks*k*k), a.take(chunks*k*k)
+	w.g, w.lo = a.take(chunks*k*k), a.take(k*k)
 	w.b = a.take(k * f.block * f.workers)
 	for j := range k {
 		c := w.s[j*k : (j+1)*k]
@@ -87,29 +88,27 @@ func (f *Factor) chunks() int { return max(1, (f.blocks+chunkBlocks-1)/chunkBloc
 func (f *Factor) gram() {
 	w, k := &f.white, f.rank
 	f.each(f.chunks(), (*Factor).gramChunk)
+	clear(w.lo)
 	for c := 1; c < f.chunks(); c++ {
 		for i := range k * k {
 			s, e := dd.TwoSum(w.g[i], w.g[c*k*k+i])
 			w.g[i] = s
-			w.lo[i] += e + w.lo[c*k*k+i]
+			w.lo[i] += e
 		}
 	}
-	floats.Add(w.g[:k*k], w.lo[:k*k])
+	floats.Add(w.g[:k*k], w.lo)
 }
 
 func (f *Factor) gramChunk(worker, chunk int) {
 	w, k := &f.white, f.rank
-	g, lo := w.g[chunk*k*k:(chunk+1)*k*k], w.lo[chunk*k*k:(chunk+1)*k*k]
+	g := w.g[chunk*k*k : (chunk+1)*k*k]
 	clear(g)
-	clear(lo)
 	for block := chunk * chunkBlocks; block < min((chunk+1)*chunkBlocks, f.blocks); block++ {
 		b, m := f.whitenBlock(worker, block)
 		for j := range k {
 			bj := b[j*f.block : j*f.block+m]
 			for i := 0; i <= j; i++ {
-				s, e := dd.TwoSum(g[j*k+i], floats.Dot(b[i*f.block:i*f.block+m], bj))
-				g[j*k+i] = s
-				lo[j*k+i] += e
+				g[j*k+i] += floats.Dot(b[i*f.block:i*f.block+m], bj)
 			}
 		}
 	}
@@ -259,6 +258,9 @@ func (f *Factor) leverageBlock(worker, block int) {
 		for i, v := range bj {
 			out[i] += v * v
 		}
+	}
+	for i, v := range out {
+		out[i] = min(v, 1)
 	}
 }
 

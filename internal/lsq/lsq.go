@@ -36,7 +36,7 @@ type Problem struct {
 	N, P int
 	X    []float64 // n×p, column-major: column j is X[j*N:(j+1)*N]
 	XLo  []float64 // low parts of X, same layout; nil when all are zero
-	Y    []float64 // n; not read by Factorize
+	Y    []float64 // n; for the caller's use: Solve is handed its right-hand side
 	YLo  []float64 // low parts of Y; nil when all are zero
 	// Workers is the number of goroutines that share the row blocks of a tall
 	// problem; 0 and 1 mean none besides the caller. Results are the same bit
@@ -72,7 +72,7 @@ type Factor struct {
 	ws   *Workspace
 	rank int
 
-	workers int
+	workers int // goroutines for passes over the rows
 
 	perm  []int     // perm[k] is the column at position k
 	scale []float64 // by column: the power of two applied to the column
@@ -82,13 +82,11 @@ type Factor struct {
 	leaves leafBlocks // row blocks factorised first; none for small problems
 	root   []float64  // m×p column-major: R above, Householder vectors below
 	m      int        // rows of root
+	tau    []float64  // of root
 	block  int        // rows of a block in passes over the rows
-	blocks int
-	tau    []float64 // of root
+	blocks int        // number of such blocks
 
-	far [][]float64 // scaled copies of columns of extreme size, by column; usually nil
-	// (far[j] holds the high parts, farLo[j] the low parts when there are any)
-	farLo [][]float64
+	far, farLo [][]float64 // scaled copies of columns of extreme size, by column; usually nil
 
 	f        []float64 // n: residual of the augmented system, then its correction
 	side     side

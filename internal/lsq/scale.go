@@ -10,9 +10,9 @@ import (
 // its reciprocal are normal numbers.
 const maxScaleExp = 1000
 
-// Columns whose scale exceeds 2^±farExp are copied in scaled form: the error
-// terms of their products could underflow otherwise.
-const farExp = 400
+// Columns whose scale or its reciprocal exceeds farScale are copied in scaled
+// form: the error terms of their products could underflow otherwise.
+const farScale = 0x1p400
 
 // norm2 returns the Euclidean norm of x without overflow or harmful
 // underflow, as m·2^e.

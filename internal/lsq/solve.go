@@ -7,6 +7,7 @@ import (
 	"gonum.org/v1/gonum/floats"
 )
 
+// maxPasses bounds the refinement; 6 were needed at condition 2e13.
 const maxPasses = 10
 
 // Solve finds the b that minimises ‖y + ylo - X b‖₂ over the independent
@@ -29,20 +30,22 @@ func (f *Factor) Solve(y, ylo []float64, s *Solution) {
 
 	clear(f.g[:k])
 	scaleTo(f.f, y, sy)
-	var last, rate float64
-	var lastR float64
+	var lastX, lastR float64 // the largest elements of the last correction
 	for {
 		ex, er := f.correct()
 		if s.Passes > 0 {
-			rate = min(1, max(quotient(ex, last), quotient(er, lastR)))
-			if f.settled(rate*ex, rate*er, r, ynorm) || s.Passes > 1 && ex > last/2 && er > lastR/2 {
+			// Corrections shrink by a constant factor until they reach the
+			// rounding of double-double, where they stall.
+			rate := min(1, max(quotient(ex, lastX), quotient(er, lastR)))
+			stalled := s.Passes > 1 && ex > lastX/2 && er > lastR/2
+			if stalled || f.settled(rate*ex, rate*er, r, ynorm) {
 				break
 			}
 		}
 		if s.Passes == maxPasses || ynorm == 0 {
 			break
 		}
-		last, lastR = ex, er
+		lastX, lastR = ex, er
 		f.augmented()
 		s.Passes++
 	}
@@ -63,6 +66,7 @@ func (f *Factor) Solve(y, ylo []float64, s *Solution) {
 	f.side = side{} // keep none of the caller's slices
 }
 
+// quotient is a/b, and 0 for 0/0.
 func quotient(a, b float64) float64 {
 	if a == 0 {
 		return 0
@@ -73,6 +77,8 @@ func quotient(a, b float64) float64 {
 // settled reports whether a next correction, predicted as (ex, er) in the
 // largest element, would be below rounding.
 func (f *Factor) settled(ex, er float64, r []float64, ynorm float64) bool {
+	// Either far below the last bit of the smallest element, or not to be had
+	// in double-double beside the largest.
 	const fine, floor = 0x1p-57, 0x1p-96
 	var largest, smallest float64 = 0, math.Inf(1)
 	for _, v := range f.x[:f.rank] {
@@ -130,7 +136,7 @@ func (f *Factor) correct() (ex, er float64) {
 // add3 returns hi + lo + v as a hi and lo part.
 func add3(hi, lo, v float64) (float64, float64) {
 	s, e := dd.TwoSum(hi, v)
-	return dd.QuickTwoSum(s, e+lo)
+	return dd.TwoSum(s, e+lo) // s may be the smaller after cancellation
 }
 
 // store writes the solution in the columns' own scale.

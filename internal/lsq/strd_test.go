@@ -165,7 +165,7 @@ func TestReferenceRegression(t *testing.T) {
 				t.Helper()
 				d := digits.AgreeString(got, want)
 				worst = min(worst, d)
-				if !(d >= 14.5) {
+				if !(d >= 15) {
 					t.Errorf("%s = %.17g, want %s: %.1f digits", what, got, want, d)
 				}
 			}
