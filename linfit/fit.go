@@ -120,8 +120,8 @@ func fit(ctx context.Context, f *design.Frame, c *clusters, opts *Options) (tram
 			Hint:    "give at least as many rows as columns"}
 	}
 	cases := f.Cases()
-	if cases > 1<<53 {
-		return nil, &Error{Code: codeOutOfRange, Message: "the counts sum to more than 2^53", Hint: "write weighted instead of counted"}
+	if cases > 1<<53 || cases > math.MaxInt {
+		return nil, &Error{Code: codeOutOfRange, Message: "the counts sum to more cases than can be counted", Hint: "write weighted instead of counted"}
 	}
 	freedom := int(int64(cases) - int64(p))
 	if freedom == 0 && (opts.Robust != Ordinary || c != nil) {

@@ -260,3 +260,43 @@ func TestStreamedMemory(t *testing.T) {
 	}
 	t.Logf("bytes a row: fit %.2f, the rest %.2f", perRow, later)
 }
+
+// TestExactOnBothPaths: lines without scatter, in whole numbers and in decimals
+// that are rounded, are reported as exact on both paths; scatter of 1e-9 is not.
+func TestExactOnBothPaths(t *testing.T) {
+	const n = 600
+	for _, c := range []struct {
+		name  string
+		y     func(x, f float64) float64
+		exact bool
+	}{
+		{"whole", func(x, f float64) float64 { return 1e6 + 3*x + f*x }, true},
+		{"decimals", func(x, f float64) float64 { return 0.1 + 0.3*x + 0.7*f*x }, true},
+		{"scatter", func(x, f float64) float64 { return 0.1 + 0.3*x + 0.7*f*x + 1e-9*math.Sin(100*x) }, false},
+	} {
+		x, f, y := make([]float64, n), make([]float64, n), make([]float64, n)
+		for i := range n {
+			x[i], f[i] = float64(i%37), float64(i%3)
+			y[i] = c.y(x[i], f[i])
+		}
+		table, err := design.NewTable(design.Numbers("x", x), design.Numbers("f", f), design.Numbers("y", y))
+		if err != nil {
+			t.Fatal(err)
+		}
+		frame := prepared(t, "y ~ x * cat(f)", table)
+		for path, solve := range map[string]func(*run, *clusters) (*solved, error){"direct": solveDirect, "streamed": solveStreamed} {
+			r := runOf(frame, Ordinary, 1)
+			s, err := solve(r, nil)
+			if err != nil || s == nil {
+				t.Fatal(s, err)
+			}
+			out := &handover.Fit{Freedom: n - len(s.b)}
+			if err := finish(out, r, s, nil); err != nil {
+				t.Fatal(err)
+			}
+			if out.ExactFit != c.exact {
+				t.Errorf("%s, %s: exact is %v; RSS %g beside %g", c.name, path, out.ExactFit, out.ResidualSS, s.size)
+			}
+		}
+	}
+}
