@@ -153,6 +153,9 @@ func (w *wording) meaning(col codedColumn) string {
 		}
 	}
 	text := subject
+	if len(col.factors) == 0 && len(at) == 0 && len(full) == 0 {
+		return "mean of " + subject
+	}
 	if len(reduced) > 0 {
 		if len(nums) > 0 {
 			subject = "the " + strings.TrimPrefix(subject, "the ")

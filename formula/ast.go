@@ -4,34 +4,45 @@ package formula
 // The zero Span means "no place in the text".
 type Span struct{ Start, End int }
 
-// A Node is any part of a parsed model. Nodes carry the names of the grammar's
+// A node is any part of a parsed model. Nodes carry the names of the grammar's
 // productions. They are made by [Parse] and [ParseCoef] only and must not be
-// modified; they may be shared between goroutines. String prints canonical
-// text: spaces round + and - only, the fewest parentheses, the shortest
-// numbers, ", " between arguments.
-type Node interface {
+// modified; they may be shared between goroutines. Every node has these methods.
+type node interface {
 	// Span tells where the node stands in the text it was parsed from.
 	Span() Span
+	// String prints canonical text: spaces round + and - only, the fewest
+	// parentheses, the shortest numbers, ", " between arguments.
 	String() string
 	node()
 }
 
 // A Term is a node of the right side of a terms-form model: *Terms, *Cross,
-// *By, *Inside, *Intercept, *Name, *Call or *Category. TermText gives the
-// canonical text by which terms are equal and which names them in tables: as
-// String, but num(…) is replaced by its arithmetic, so that num(hold^2) and the
-// square of powers(hold, 2) are both "hold^2". A comparison keeps parentheses:
-// "(furnace='F2')".
+// *By, *Inside, *Intercept, *Name, *Call or *Category. Nodes are made by
+// [Parse] only, must not be modified and may be shared between goroutines.
 type Term interface {
-	Node
+	// Span tells where the term stands in the text it was parsed from.
+	Span() Span
+	// String prints canonical text that parses to the same term.
+	String() string
+	// TermText gives the canonical text by which terms are equal and which
+	// names them in tables: as String, but num(…) is replaced by its arithmetic,
+	// so that num(hold^2) and the square of powers(hold, 2) are both "hold^2". A
+	// comparison keeps parentheses: "(furnace='F2')".
 	TermText() string
+	node()
 	term()
 }
 
 // An Expr is a node of arithmetic: *Number, *Bool, *Pi, *Name, *Call, *Unary,
-// *Binary, *Compare, or, beside a comparison sign only, *Level.
+// *Binary, *Compare, or, beside a comparison sign only, *Level. Nodes are made
+// by [Parse] and [ParseCoef] only, must not be modified and may be shared
+// between goroutines.
 type Expr interface {
-	Node
+	// Span tells where the expression stands in the text it was parsed from.
+	Span() Span
+	// String prints canonical text that parses to the same expression.
+	String() string
+	node()
 	expr()
 }
 

@@ -67,7 +67,7 @@ func (c *checker) declare(m *Model) *Error {
 }
 
 // columns refuses parameters where only columns may stand.
-func (c *checker) columns(what string, nodes ...Node) *Error {
+func (c *checker) columns(what string, nodes ...node) *Error {
 	var e *Error
 	for _, n := range nodes {
 		eachName(n, func(n *Name) {
@@ -98,7 +98,7 @@ func (c *checker) response(m *Model) *Error {
 
 // right checks the right side: terms, equation, and the models of parameters.
 func (c *checker) right(m *Model) *Error {
-	var nodes []Node
+	var nodes []node
 	if m.Terms != nil {
 		if e := c.terms(m.Terms, true); e != nil {
 			return e
@@ -271,7 +271,7 @@ func checkFamily(m *Model, clauses map[string]Span) *Error {
 }
 
 // eachName calls f for every column or parameter name below a node.
-func eachName(n Node, f func(*Name)) {
+func eachName(n node, f func(*Name)) {
 	switch n := n.(type) {
 	case *Name:
 		f(n)
@@ -309,7 +309,7 @@ func eachName(n Node, f func(*Name)) {
 	}
 }
 
-func eachOf[N Node](nodes []N, f func(*Name)) {
+func eachOf[N node](nodes []N, f func(*Name)) {
 	for _, n := range nodes {
 		eachName(n, f)
 	}

@@ -194,12 +194,12 @@ const (
 	//	coef: a by
 	codeSyntax Code = "syntax"
 
-	// codeTooDeep: the text is nested deeper than MaxNesting.
+	// codeTooDeep: the text is nested deeper than maxNesting.
 	//
 	//	go: 201 parentheses
 	codeTooDeep Code = "too-deep"
 
-	// codeTooLong: the text is longer than MaxText.
+	// codeTooLong: the text is longer than maxText.
 	//
 	//	go: 65537 bytes
 	codeTooLong Code = "too-long"

@@ -18,7 +18,7 @@ var goExamples = map[string]func() error{
 		return err
 	},
 	"65537 bytes": func() error {
-		_, err := Parse("y ~ x" + strings.Repeat(" ", MaxText-4))
+		_, err := Parse("y ~ x" + strings.Repeat(" ", maxText-4))
 		return err
 	},
 }

@@ -41,7 +41,7 @@ func FuzzParse(f *testing.F) {
 			return
 		}
 		printed := m.String()
-		if len(printed) > MaxText {
+		if len(printed) > maxText {
 			return // spaces round + and - may carry a text over the limit
 		}
 		again, err := Parse(printed)
@@ -72,7 +72,7 @@ func FuzzParseCoef(f *testing.F) {
 			return
 		}
 		printed := c.String()
-		if len(printed) > MaxText {
+		if len(printed) > maxText {
 			return
 		}
 		again, err := ParseCoef(printed)

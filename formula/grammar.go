@@ -113,8 +113,8 @@ var (
 // parse checks the limits, then reads text by the parser. It also tells where
 // the last token ends.
 func parse[T any](p *participle.Parser[T], text string, brackets bool) (*T, int, *Error) {
-	if len(text) > MaxText {
-		return nil, 0, refuse(codeTooLong, Span{}, "split it into several models", "the text has %d bytes; at most %d are read", len(text), MaxText)
+	if len(text) > maxText {
+		return nil, 0, refuse(codeTooLong, Span{}, "split it into several models", "the text has %d bytes; at most %d are read", len(text), maxText)
 	}
 	if at := invalidUTF8(text); at >= 0 {
 		return nil, 0, refuse(codeInvalidUTF8, Span{at, at + 1}, "save the text as UTF-8", "the text is not valid UTF-8 here")

@@ -2,12 +2,14 @@ package formula
 
 import "github.com/alecthomas/participle/v2/lexer"
 
-// Limits of the language. They are checked before anything of that size is
-// made.
+// MaxTerms is the greatest number of terms that a model may expand to. [Parse]
+// bounds the number before anything expands; package design counts exactly.
+const MaxTerms = 10000
+
+// Further limits of the language, checked before anything of that size is made.
 const (
-	MaxText    = 64 << 10 // bytes of one text
-	MaxNesting = 200      // open parentheses and runs of unary - and of ^
-	MaxTerms   = 10000    // terms after expansion
+	maxText    = 64 << 10 // bytes of one text
+	maxNesting = 200      // open parentheses and runs of unary - and of ^
 )
 
 // Limits of single arguments. Beyond them a basis has no use: neighbouring
@@ -60,9 +62,9 @@ func checkNesting(tokens []lexer.Token) *Error {
 			depth -= runs[top]
 			runs[top] = 0
 		}
-		if depth > MaxNesting {
+		if depth > maxNesting {
 			return refuse(codeTooDeep, spanOf(t), "split it into parts",
-				"the text is nested deeper than %d levels here", MaxNesting)
+				"the text is nested deeper than %d levels here", maxNesting)
 		}
 	}
 	return nil

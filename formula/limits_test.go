@@ -28,19 +28,19 @@ var nested = map[string]func(depth int) string{
 
 func TestNesting(t *testing.T) {
 	for name, text := range nested {
-		if _, err := Parse(text(MaxNesting)); err != nil {
-			t.Errorf("%s: depth %d is refused: %v", name, MaxNesting, err)
+		if _, err := Parse(text(maxNesting)); err != nil {
+			t.Errorf("%s: depth %d is refused: %v", name, maxNesting, err)
 		}
-		for _, depth := range []int{MaxNesting + 1, 9000} {
+		for _, depth := range []int{maxNesting + 1, 9000} {
 			if _, err := Parse(text(depth)); !errors.Is(err, codeTooDeep) {
 				t.Errorf("%s: depth %d gives %v", name, depth, err)
 			}
 		}
 	}
-	if _, err := ParseCoef(strings.Repeat("k[", MaxNesting) + "x" + strings.Repeat("]", MaxNesting)); err != nil {
+	if _, err := ParseCoef(strings.Repeat("k[", maxNesting) + "x" + strings.Repeat("]", maxNesting)); err != nil {
 		t.Errorf("brackets: %v", err)
 	}
-	if _, err := ParseCoef(strings.Repeat("k[", MaxNesting+1) + "x" + strings.Repeat("]", MaxNesting+1)); !errors.Is(err, codeTooDeep) {
+	if _, err := ParseCoef(strings.Repeat("k[", maxNesting+1) + "x" + strings.Repeat("]", maxNesting+1)); !errors.Is(err, codeTooDeep) {
 		t.Errorf("brackets: %v", err)
 	}
 	// Long but flat texts are no nesting.
@@ -76,14 +76,14 @@ func TestDepthCost(t *testing.T) {
 }
 
 func TestTextLimit(t *testing.T) {
-	text := "y ~ x" + strings.Repeat(" ", MaxText-5)
+	text := "y ~ x" + strings.Repeat(" ", maxText-5)
 	if _, err := Parse(text); err != nil {
 		t.Errorf("%d bytes are refused: %v", len(text), err)
 	}
 	if _, err := Parse(text + " "); !errors.Is(err, codeTooLong) {
 		t.Errorf("%d bytes: %v", len(text)+1, err)
 	}
-	if _, err := ParseCoef(strings.Repeat("x", MaxText+1)); !errors.Is(err, codeTooLong) {
+	if _, err := ParseCoef(strings.Repeat("x", maxText+1)); !errors.Is(err, codeTooLong) {
 		t.Errorf("a long name: %v", err)
 	}
 }

@@ -4,8 +4,10 @@ import "unicode/utf8"
 
 // Parse turns the text of one model into its tree. What breaks the language or
 // one of its limits is refused by an [*Error]; whatever needs data to be told
-// (names, kinds and levels of columns) is left to package design. Parse does
-// work in proportion to the length of the text and may be called concurrently.
+// (names, kinds and levels of columns) is left to package design. Texts
+// have at most 64 KiB and 200 open parentheses, unary minus signs and powers
+// within each other. Parse does work in proportion to the length of the text and
+// may be called concurrently.
 func Parse(text string) (*Model, error) {
 	m, e := parseModel(text)
 	if e != nil {

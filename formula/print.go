@@ -81,7 +81,7 @@ func termText(t Term) string {
 	return p.String()
 }
 
-func text(n Node) string {
+func text(n node) string {
 	var p printer
 	p.node(n)
 	return p.String()
@@ -119,7 +119,7 @@ const (
 	bindFactor
 )
 
-func binding(n Node) int {
+func binding(n node) int {
 	switch n := n.(type) {
 	case *Compare:
 		return bindCompare
@@ -145,7 +145,7 @@ func binding(n Node) int {
 	return max(bindPrimary, bindFactor)
 }
 
-func (p *printer) within(n Node, least int) {
+func (p *printer) within(n node, least int) {
 	if binding(n) >= least {
 		p.node(n)
 		return
@@ -155,7 +155,7 @@ func (p *printer) within(n Node, least int) {
 	p.put(")")
 }
 
-func list[N Node](p *printer, nodes []N, separator string, least int) {
+func list[N node](p *printer, nodes []N, separator string, least int) {
 	for i, n := range nodes {
 		if i > 0 {
 			p.put(separator)
@@ -164,7 +164,7 @@ func list[N Node](p *printer, nodes []N, separator string, least int) {
 	}
 }
 
-func (p *printer) node(n Node) {
+func (p *printer) node(n node) {
 	switch n := n.(type) {
 	case *Model:
 		p.model(n)

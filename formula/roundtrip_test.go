@@ -62,6 +62,10 @@ var roundTrips = []struct{ text, canonical string }{
 	{"y ~ x weighted (z > 2) counted (z > 3)", "y ~ x weighted (z>2) counted (z>3)"},
 	{"y = (k > x) fitting k", "y = (k>x) fitting k"},
 	{"log(y/x) ~ x", "log(y/x) ~ x"},
+	{"y ~ (-a + b) + c", "y ~ (-a + b) + c"},
+	{"k ~ x weighted w as overdispersed poisson", "k ~ x as overdispersed poisson weighted w"},
+	{"k out of n ~ x weighted w as overdispersed binomial", "k out of n ~ x as overdispersed binomial weighted w"},
+	{"y ~ x weighted w as inverse_gaussian link identity", "y ~ x as inverse_gaussian link identity weighted w"},
 	{"mean ~ previous + overdispersed + normal", "mean ~ previous + overdispersed + normal"},
 }
 

@@ -244,7 +244,7 @@ func checkCall(c *Call, counts [2]int) *Error {
 		}
 		return refuse(codeArgumentCount, c.Pos, "write it as in "+example, "%s takes %s, not %d", c.Func, want, n).naming(c.Func)
 	}
-	bad := func(x Node, hint, format string, args ...any) *Error {
+	bad := func(x node, hint, format string, args ...any) *Error {
 		return refuse(codeBadArgument, x.Span(), hint, format, args...).naming(c.Func)
 	}
 	whole := func(x Expr, least, most int) *Error {

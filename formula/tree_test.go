@@ -98,7 +98,7 @@ func TestSpans(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	at := func(n Node) string { return text[n.Span().Start:n.Span().End] }
+	at := func(n node) string { return text[n.Span().Start:n.Span().End] }
 	cross := m.Terms.Items[0].Term.(*Cross)
 	num := m.Terms.Items[1].Term.(*Call)
 	compare := num.Args[0].(*Compare)
@@ -130,15 +130,15 @@ func TestSpans(t *testing.T) {
 	}
 }
 
-// TestFunctions: every function listed parses, alone as a term and in an
+// TestFunctionNames: every function listed parses, alone as a term and in an
 // equation, and nothing else does.
-func TestFunctions(t *testing.T) {
+func TestFunctionNames(t *testing.T) {
 	want := []string{"abs", "atan", "cos", "erf", "exp", "expm1", "if", "log", "log10", "log1p", "max", "min", "sin", "sqrt", "tan", "tanh"}
-	if got := Functions(); !slices.Equal(got, want) {
-		t.Errorf("Functions() = %v, want %v", got, want)
+	if got := functionNames(); !slices.Equal(got, want) {
+		t.Errorf("functionNames() = %v, want %v", got, want)
 	}
 	args := map[string]string{"if": "x, x, x", "min": "x, z", "max": "x, z"}
-	for _, f := range Functions() {
+	for _, f := range functionNames() {
 		a := args[f]
 		if a == "" {
 			a = "x"

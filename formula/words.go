@@ -39,9 +39,8 @@ var usage = map[string]string{
 	"upto": "upto(2, x + z)",
 }
 
-// Functions lists the functions of arithmetic in alphabetical order. The slice
-// is the caller's.
-func Functions() []string {
+// functionNames lists the functions of arithmetic in alphabetical order.
+func functionNames() []string {
 	names := make([]string, 0, len(arithmetic))
 	for name := range arithmetic {
 		if name != "coded" {
@@ -55,7 +54,7 @@ func Functions() []string {
 // callNames lists, in alphabetical order, what may stand before "(": in
 // arithmetic, or as a term.
 func callNames(asTerm bool) []string {
-	names := append(Functions(), "coded")
+	names := append(functionNames(), "coded")
 	if asTerm {
 		for name := range termOnly {
 			names = append(names, name)
