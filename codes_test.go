@@ -2,9 +2,11 @@ package trammel_test
 
 import (
 	"errors"
+	"fmt"
 	"go/ast"
 	"go/parser"
 	"go/token"
+	"os"
 	"regexp"
 	"slices"
 	"strconv"
@@ -69,6 +71,7 @@ func TestCodes(t *testing.T) {
 	example := regexp.MustCompile(`(?m)^\s*csv: (.*)\n\s*model: (.*)\n\s*ask: (.*)$`)
 	var written []trammel.Code
 	used := map[string]bool{}
+	var texts strings.Builder
 	for _, decl := range file.Decls {
 		gen, ok := decl.(*ast.GenDecl)
 		if !ok || gen.Tok != token.CONST {
@@ -95,6 +98,7 @@ func TestCodes(t *testing.T) {
 					t.Errorf("%s: asking for %s brought %v", code, e[3], got)
 					continue
 				}
+				fmt.Fprintf(&texts, "== %s of %s: %s\n%s\n", e[3], e[2], code, refusal)
 				if text := refusal.Error(); !strings.HasPrefix(text, "trammel: ") || strings.Contains(text, "\n") {
 					t.Errorf("%s: the text is not one line of this package: %s", code, text)
 				}
@@ -104,6 +108,19 @@ func TestCodes(t *testing.T) {
 	slices.Sort(written)
 	if got := slices.Sorted(slices.Values(trammel.Codes())); !slices.Equal(got, written) {
 		t.Errorf("Codes lists\n%q, but codes.go has\n%q", got, written)
+	}
+	const golden = "testdata/refusals.txt"
+	if os.Getenv("TRAMMEL_UPDATE") != "" {
+		if err := os.WriteFile(golden, []byte(texts.String()), 0o644); err != nil {
+			t.Fatal(err)
+		}
+	}
+	want, err := os.ReadFile(golden)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if texts.String() != string(want) {
+		t.Errorf("the refusals differ from %s:\n%s", golden, &texts)
 	}
 	for name := range asks {
 		if !used[name] {

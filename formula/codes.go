@@ -194,12 +194,12 @@ const (
 	//	coef: a by
 	codeSyntax Code = "syntax"
 
-	// codeTooDeep: the text is nested deeper than maxNesting.
+	// codeTooDeep: the text is nested deeper than 200 levels.
 	//
 	//	go: 201 parentheses
 	codeTooDeep Code = "too-deep"
 
-	// codeTooLong: the text is longer than maxText.
+	// codeTooLong: the text is longer than 64 KiB.
 	//
 	//	go: 65537 bytes
 	codeTooLong Code = "too-long"

@@ -3,9 +3,11 @@ package linfit_test
 import (
 	"context"
 	"errors"
+	"fmt"
 	"go/ast"
 	"go/parser"
 	"go/token"
+	"os"
 	"regexp"
 	"slices"
 	"strconv"
@@ -80,6 +82,7 @@ func TestCodes(t *testing.T) {
 	kebab := regexp.MustCompile(`^[a-z0-9]+(-[a-z0-9]+)*$`)
 	example := regexp.MustCompile(`(?m)^\s*csv: (.*)\n\s*model: (.*)\n\s*options: (.*)$`)
 	var written []linfit.Code
+	var texts strings.Builder
 	for _, decl := range file.Decls {
 		gen, ok := decl.(*ast.GenDecl)
 		if !ok || gen.Tok != token.CONST {
@@ -115,13 +118,14 @@ func TestCodes(t *testing.T) {
 			if e.Hint == "" && code != "cancelled" {
 				t.Errorf("%s does not say what to write instead", code)
 			}
-			t.Log(err)
+			fmt.Fprintf(&texts, "== %s: %s\n%s\n", found[2], code, err)
 		}
 	}
 	slices.Sort(written)
 	if !slices.Equal(written, linfit.Codes()) {
 		t.Errorf("Codes() is %v, the file has %v", linfit.Codes(), written)
 	}
+	compareGolden(t, "testdata/refusals.txt", texts.String())
 }
 
 // TestEndedEarly: the cause of a cancelled fit and the error of a progress call
@@ -164,5 +168,23 @@ func TestSaturated(t *testing.T) {
 	}
 	if b := r.Estimates(); b[0] != 0.5 || b[1] != 1.5 || r.StdErrors() != nil || r.Freedom() != 0 || r.Covariance() != nil {
 		t.Errorf("estimates %v, errors %v, freedom %d", b, r.StdErrors(), r.Freedom())
+	}
+}
+
+// compareGolden compares text with a golden file; TRAMMEL_UPDATE=1 writes the
+// file anew.
+func compareGolden(t *testing.T, path, got string) {
+	t.Helper()
+	if os.Getenv("TRAMMEL_UPDATE") != "" {
+		if err := os.WriteFile(path, []byte(got), 0o644); err != nil {
+			t.Fatal(err)
+		}
+	}
+	want, err := os.ReadFile(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if got != string(want) {
+		t.Errorf("the refusals differ from %s:\n%s", path, got)
 	}
 }
