@@ -7,4 +7,4 @@ require (
 	gonum.org/v1/gonum v0.17.0
 )
 
-require golang.org/x/text v0.44.0 // indirect
+require golang.org/x/text v0.44.0

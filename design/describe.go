@@ -148,9 +148,7 @@ func (w *wording) meaning(col codedColumn) string {
 	}
 	if len(reduced) == 0 && len(full) == 0 {
 		// The effect stands for the reference of every category it is crossed with.
-		for _, g := range w.crossed(t, col) {
-			full = append(full, g)
-		}
+		full = append(full, w.crossed(t, col)...)
 	}
 	text := subject
 	if len(col.factors) == 0 && len(at) == 0 && len(full) == 0 {

@@ -119,23 +119,6 @@ func (t *rawTerm) nestText(key string) string {
 	return text + " inside " + outer[0]
 }
 
-// source is the term's text ready to stand in a model: numeric factors in num()
-// where the language wants it.
-func (t *rawTerm) source() string {
-	if len(t.factors) == 0 {
-		return "intercept"
-	}
-	u := rawTerm{nests: t.nests}
-	for _, f := range t.factors {
-		g := *f
-		if f.num != nil {
-			g.text = f.num.source()
-		}
-		u.factors = append(u.factors, &g)
-	}
-	return u.text()
-}
-
 // An expansion is a model's right side, expanded.
 type expansion struct {
 	terms []*rawTerm // by number of factors, then as written; the intercept first

@@ -181,7 +181,7 @@ func (p *Plan) jointMend(ks []int, joint string) string {
 		}
 		var parts []string
 		for i, f := range t.raw.factors {
-			text := f.text
+			var text string
 			switch tf := t.factors[i]; {
 			case f.num != nil:
 				text = f.num.source()

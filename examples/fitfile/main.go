@@ -40,6 +40,10 @@ func run(ctx context.Context, args []string, stdout, stderr io.Writer) int {
 		fmt.Fprintln(stderr, err)
 		return 1
 	}
+	misused := func(format string, args ...any) int {
+		fmt.Fprintf(stderr, "fitfile: "+format+"\n"+usage, args...)
+		return 1
+	}
 	if err := flags.Parse(args); err != nil {
 		if errors.Is(err, flag.ErrHelp) {
 			fmt.Fprint(stdout, usage)
@@ -47,17 +51,17 @@ func run(ctx context.Context, args []string, stdout, stderr io.Writer) int {
 			flags.PrintDefaults()
 			return 0
 		}
-		return fail(fmt.Errorf("fitfile: %w\n%s", err, usage))
+		return misused("%v", err)
 	}
 	switch {
 	case *data == "":
-		return fail(errors.New("fitfile: no data file was named; write -data FILE.csv\n" + usage))
+		return misused("no data file was named; write -data FILE.csv")
 	case flags.NArg() == 0:
-		return fail(errors.New("fitfile: no model was given; write it in single quotes after the flags\n" + usage))
+		return misused("no model was given; write it in single quotes after the flags")
 	case flags.NArg() > 1:
-		return fail(fmt.Errorf("fitfile: one model was expected and %d arguments follow the flags; put the model in single quotes, after all flags\n%s", flags.NArg(), usage))
+		return misused("one model was expected and %d arguments follow the flags; put the model in single quotes, after all flags", flags.NArg())
 	case !(*level > 0 && *level < 1):
-		return fail(fmt.Errorf("fitfile: -level is %v; it must be above 0 and below 1, such as 0.95", *level))
+		return misused("-level is %v; it must be above 0 and below 1, such as 0.95", *level)
 	}
 	table, err := readTable(*data)
 	if err != nil {
