@@ -11,12 +11,15 @@ var rootHalf = dd.Of(0.5).Sqrt()
 
 // NormalUpper is P(Z > x) for the standard normal distribution.
 func NormalUpper(x float64) float64 {
+	if math.IsInf(x, 0) || math.IsNaN(x) {
+		return math.Erfc(x) / 2
+	}
 	// erfc(x/√2)/2; the rounding of x/√2, which far out would cost x² units,
 	// is put back to first order.
 	t := rootHalf.MulF(x)
 	q := math.Erfc(t.Hi) / 2
-	if math.IsInf(x, 0) || math.IsNaN(x) || q == 0 {
-		return q
+	if q == 0 {
+		return 0
 	}
 	return q - t.Lo*math.Exp(-t.Hi*t.Hi)/math.SqrtPi
 }

@@ -42,7 +42,8 @@ func positiveQuantile(p float64, eval func(x float64) (tail, slope float64), sta
 				next = z + (want-math.Log(tail))*tail/slope
 			}
 		}
-		if !(next > lo && next < hi) || k > 60 {
+		// So near, the bracket in log x has no digits left to judge the step by.
+		if near := math.Abs(next-z) < 1e-10; !(near || next > lo && next < hi) || k > 60 {
 			next = lo + (hi-lo)/2
 		}
 		step := next - z
