@@ -34,6 +34,8 @@ func FuzzParse(f *testing.F) {
 	for _, text := range refused {
 		f.Add(text)
 	}
+	// A long level once stood in full in the remedy.
+	f.Add("'" + strings.Repeat("\x06", 5000) + "' = f ~ x")
 	f.Fuzz(func(t *testing.T, text string) {
 		m, err := Parse(text)
 		if err != nil {

@@ -50,8 +50,8 @@ func (s *stream) cond() Expr {
 		l := s.level()
 		c.Y = l
 		if _, ok := x.(*Name); !ok {
-			s.fail(refuse(codeLevelPlace, x.Span(), "compare a text column itself: furnace = "+l.String(),
-				"only a column can be compared with the level %s", l))
+			s.fail(refuse(codeLevelPlace, x.Span(), "compare a text column itself: furnace = "+shorten(l.String()),
+				"only a column can be compared with the level %s", shorten(l.String())))
 		} else if op.Value != "=" && op.Value != "<>" {
 			s.fail(refuse(codeLevelPlace, c.OpPos, "", "levels of a text column have no size: %s cannot compare them", op.Value).pasting("<>"))
 		}
@@ -80,7 +80,7 @@ func (s *stream) cond() Expr {
 // turned round.
 func (s *stream) backwardLevel() Expr {
 	l := s.level()
-	e := refuse(codeLevelPlace, l.Pos, "write furnace = "+l.String()+" with the column first",
+	e := refuse(codeLevelPlace, l.Pos, "write furnace = "+shorten(l.String())+" with the column first",
 		"a level stands only after = or <> and inside cat(…)")
 	if s.at("=") || s.at("<>") {
 		op := s.next()

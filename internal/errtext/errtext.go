@@ -37,6 +37,7 @@ func Format(pkg, text string, start, end int, message, hint string) string {
 		line, col := Position(text, start)
 		b.WriteString(strconv.Itoa(line) + ":" + strconv.Itoa(col) + ": ")
 	}
+	message, hint = visible(message), visible(hint)
 	b.WriteString(message)
 	if hint != "" {
 		if !strings.HasSuffix(message, ".") && !strings.HasSuffix(message, "?") {
@@ -49,6 +50,29 @@ func Format(pkg, text string, start, end int, message, hint string) string {
 		b.WriteString(snippet(text, start, end))
 	}
 	return b.String()
+}
+
+// visible keeps a sentence on one line: control and format characters, which
+// a quoted name or level may hold, are written as escapes.
+func visible(s string) string {
+	if !strings.ContainsFunc(s, hidden) {
+		return s
+	}
+	var b strings.Builder
+	for _, r := range s {
+		if hidden(r) {
+			q := strconv.QuoteRuneToASCII(r)
+			b.WriteString(q[1 : len(q)-1])
+		} else {
+			b.WriteRune(r)
+		}
+	}
+	return b.String()
+}
+
+// hidden tells of characters that print nothing, or break or turn a line.
+func hidden(r rune) bool {
+	return r == utf8.RuneError || unicode.In(r, unicode.Cc, unicode.Cf, unicode.Zl, unicode.Zp)
 }
 
 // snippet returns "\n    line\n    ^^^" for the span, marks as wide as the
@@ -88,7 +112,7 @@ func snippet(text string, start, end int) string {
 		w := 1
 		if i < len(runes) {
 			r := runes[i]
-			if r == utf8.RuneError || unicode.In(r, unicode.Cc, unicode.Cf, unicode.Zl, unicode.Zp) {
+			if hidden(r) {
 				r = ' '
 			}
 			src.WriteRune(r)
