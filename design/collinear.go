@@ -32,7 +32,7 @@ type Collinearity struct {
 // Collinearity computes condition indices, variance proportions and variance
 // inflation factors. Dependent columns are refused as by CheckRank.
 func (f *Frame) Collinearity() (*Collinearity, error) {
-	q := f.weighted(rankProblem(f.Matrix.form))
+	q := f.weighted()
 	n, p := q.N, q.P
 	for j := range p {
 		col := q.X[j*n : (j+1)*n]
@@ -97,20 +97,15 @@ func (f *Frame) Collinearity() (*Collinearity, error) {
 	return out, nil
 }
 
-// weighted multiplies rows by the square roots of weight times count.
-func (f *Frame) weighted(q *lsq.Problem) *lsq.Problem {
-	if f.Weights == nil && f.Counts == nil || q.N != len(f.Y) {
-		return q
+// weighted is the frame's matrix, or few rows for it, with rows scaled by the
+// square roots of weight times count.
+func (f *Frame) weighted() *lsq.Problem {
+	form := f.Matrix.form
+	if form.N*len(form.Cols) > maxRankElements {
+		return condense(form, f.Weights, f.Counts)
 	}
-	for i := range q.N {
-		w := 1.0
-		if f.Weights != nil {
-			w *= f.Weights[i]
-		}
-		if f.Counts != nil {
-			w *= f.Counts[i]
-		}
-		w = math.Sqrt(w)
+	q := expandForm(form)
+	for i, w := range rootWeights(form.N, f.Weights, f.Counts) {
 		for j := range q.P {
 			q.X[j*q.N+i] *= w
 		}

@@ -30,12 +30,12 @@ const maxRankElements = 4_000_000
 
 // rankProblem writes the columns of a form out for the least-squares core. A
 // form too large for that is condensed to few rows with the same column
-// relations; ok is false when it cannot be.
+// relations. Weights, all positive, say nothing about the rank.
 func rankProblem(form *factored.Form) *lsq.Problem {
 	if n := form.N * len(form.Cols); n <= maxRankElements {
 		return expandForm(form)
 	}
-	return condense(form)
+	return condense(form, nil, nil)
 }
 
 func expandForm(form *factored.Form) *lsq.Problem {

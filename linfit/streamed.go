@@ -29,7 +29,7 @@ type streamed struct {
 	clusters   *clusters
 
 	mu     sync.Mutex // guards what follows
-	small  *condensed
+	small  *factored.Condensed
 	factor *lsq.Factor
 	rows   *handover.RowStats
 	cov    []float64
@@ -41,128 +41,6 @@ func streamable(form *factored.Form) bool {
 	p, v := len(form.Cols), len(form.Nums)+1
 	limit := pathElements / (v * p)
 	return len(form.Nums) <= 32 && limit > 0 && form.CountCells(limit) <= limit
-}
-
-// A condensed holds the triangles of the cells: cell k has the rows
-// rootMass·(1, means) and, for each numeric column, a row of triangle.
-type condensed struct {
-	cells    []int // those with rows of the table
-	rootMass []float64
-	mean     []dd.Num  // per cell z
-	triangle []float64 // per cell z×z, lower L row-major, L L' = moments about the mean
-	z        int
-}
-
-// leastPivot is the share of a numeric column's square that must be left, within
-// a cell, beside the columns before it. Moments carry about 15 digits and lose
-// those of its inverse, which leaves the 12 that the paths agree to.
-const leastPivot = 1e-3
-
-// condense returns nil when a cell's numeric columns are so nearly dependent
-// within it that moments would lose too many digits.
-func condense(m *factored.Moments) *condensed {
-	z := m.V - 1
-	t := m.V * (m.V + 1) / 2
-	c := &condensed{z: z}
-	for k, mass := range m.Mass {
-		if mass == 0 {
-			continue
-		}
-		l := make([]float64, z*z)
-		m2 := m.M2[k*t:]
-		for i := range z {
-			diag := m2[i*(i+1)/2+i]
-			offset := 0x1p-50 * m.MeanOf(k, i).Hi
-			for j := range i + 1 {
-				s := m2[i*(i+1)/2+j] - dot(l[i*z:i*z+j], l[j*z:j*z+j])
-				if j < i {
-					if l[j*z+j] > 0 {
-						l[i*z+j] = s / l[j*z+j]
-					}
-					continue
-				}
-				switch {
-				case diag <= mass*offset*offset || s <= 1e-13*diag:
-					// A constant of the cell, or a combination of the columns before it.
-				case s < leastPivot*diag:
-					return nil
-				default:
-					l[i*z+i] = math.Sqrt(s)
-				}
-			}
-		}
-		c.cells = append(c.cells, k)
-		c.rootMass = append(c.rootMass, math.Sqrt(mass))
-		for a := range z {
-			c.mean = append(c.mean, m.MeanOf(k, a))
-		}
-		c.triangle = append(c.triangle, l...)
-	}
-	return c
-}
-
-// problem is the condensed matrix of form.
-func (c *condensed) problem(form *factored.Form) *lsq.Problem {
-	rows := c.z + 1
-	p := &lsq.Problem{N: rows * len(c.cells), P: len(form.Cols)}
-	p.X, p.XLo = make([]float64, p.N*p.P), make([]float64, p.N*p.P)
-	entries, scratch := make([]int8, p.P), make([]int32, len(form.Cats))
-	for i, cell := range c.cells {
-		form.EntriesTo(entries, cell, scratch)
-		for j, e := range entries {
-			if e == 0 {
-				continue
-			}
-			x := p.X[j*p.N+i*rows : j*p.N+(i+1)*rows]
-			a := form.Cols[j].Num
-			if a < 0 {
-				x[0] = float64(e) * c.rootMass[i]
-				continue
-			}
-			first := c.mean[i*c.z+a].MulF(float64(e) * c.rootMass[i])
-			x[0], p.XLo[j*p.N+i*rows] = first.Hi, first.Lo
-			for q := range a + 1 {
-				x[1+q] = float64(e) * c.triangle[(i*c.z+a)*c.z+q]
-			}
-		}
-	}
-	return p
-}
-
-// side is the condensed right-hand side whose products with the columns are
-// first[cell] with the constant and others[cell][a] with numeric column a about
-// its mean.
-func (c *condensed) side(first func(cell int) float64, other func(cell, a int) float64) []float64 {
-	rows := c.z + 1
-	y := make([]float64, rows*len(c.cells))
-	for i, cell := range c.cells {
-		u := y[i*rows : (i+1)*rows]
-		u[0] = first(cell) / c.rootMass[i]
-		for a := range c.z {
-			l := c.triangle[(i*c.z+a)*c.z : (i*c.z+a)*c.z+a+1]
-			if l[a] > 0 {
-				u[1+a] = (other(cell, a) - dot(l[:a], u[1:1+a])) / l[a]
-			}
-		}
-	}
-	return y
-}
-
-// response is the side of the response the moments were formed with, hi + lo.
-func (c *condensed) response(m *factored.Moments) (hi, lo []float64) {
-	z, t := c.z, m.V*(m.V+1)/2
-	hi = c.side(func(int) float64 { return 0 }, func(k, a int) float64 { return m.M2[k*t+z*(z+1)/2+a] })
-	lo = make([]float64, len(hi))
-	for i, k := range c.cells {
-		v := m.MeanOf(k, z).MulF(c.rootMass[i])
-		hi[i*(z+1)], lo[i*(z+1)] = v.Hi, v.Lo
-	}
-	return hi, lo
-}
-
-func (c *condensed) gradient(g []float64) []float64 {
-	v := c.z + 1
-	return c.side(func(k int) float64 { return g[k*v] }, func(k, a int) float64 { return g[k*v+1+a] })
 }
 
 // solveStreamed returns nil, nil when the numbers do not suit the path.
@@ -177,15 +55,15 @@ func solveStreamed(r *run, c *clusters) (*solved, error) {
 	if e.moments, err = e.cells.Sum(e.y); err != nil {
 		return nil, err
 	}
-	if e.small = condense(e.moments); e.small == nil {
+	if e.small = factored.Condense(e.moments); e.small == nil {
 		return nil, nil
 	}
-	e.factor = lsq.Factorize(e.small.problem(r.form), nil)
+	e.factor = lsq.Factorize(e.small.Problem(r.form), nil)
 	if e.factor.Rank() < len(r.form.Cols) {
 		return nil, deficient(f)
 	}
 	var sol lsq.Solution
-	side, sideLo := e.small.response(e.moments)
+	side, sideLo := e.small.Response(e.moments)
 	e.factor.Solve(side, sideLo, &sol)
 	e.b, e.blo = slices.Clone(sol.B), slices.Clone(sol.BLo)
 	stage = "refining"
@@ -198,7 +76,7 @@ func solveStreamed(r *run, c *clusters) (*solved, error) {
 			return nil, err
 		}
 		s.passes++
-		side := e.small.gradient(g)
+		side := e.small.Gradient(g)
 		e.factor.Solve(side, nil, &sol)
 		for j := range e.b {
 			v := dd.Num{Hi: e.b[j], Lo: e.blo[j]}.AddF(sol.B[j])
@@ -215,7 +93,7 @@ func solveStreamed(r *run, c *clusters) (*solved, error) {
 	s.corrected = hasIntercept(r.form)
 	if !s.corrected {
 		// The side of the constant 1: mass with the constant, nothing with the rest.
-		one := e.small.side(func(k int) float64 { return e.moments.Mass[k] }, func(int, int) float64 { return 0 })
+		one := e.small.Side(func(k int) float64 { return e.moments.Mass[k] }, func(int, int) float64 { return 0 })
 		e.factor.Solve(one, nil, &sol)
 		s.corrected = math.Sqrt(sol.RSS.Hi) < lsq.Tolerance*norm(one)
 	}
@@ -323,7 +201,7 @@ func (e *streamed) forms(f *lsq.Factor, form *factored.Form) []float64 {
 	v, p := e.moments.V, len(form.Cols)
 	out := make([]float64, e.cells.Count*v*v)
 	u, s := make([]float64, v*p), newWhiteScratch(f, form)
-	for _, cell := range e.small.cells {
+	for _, cell := range e.small.Cells {
 		e.white(u, f, form, cell, s)
 		for a := range v {
 			for b := range v {
@@ -446,7 +324,7 @@ func (e *streamed) rowMeat(f *lsq.Factor, form *factored.Form, lines *factored.L
 	}
 	meat := make([]float64, p*p)
 	u, s := make([]float64, v*p), newWhiteScratch(f, form)
-	for _, cell := range e.small.cells {
+	for _, cell := range e.small.Cells {
 		e.white(u, f, form, cell, s)
 		for a := range v {
 			for b := range v {
@@ -498,7 +376,7 @@ func (e *streamed) clusterMeat(f *lsq.Factor, form *factored.Form, lines *factor
 	for at, k := range pairs {
 		byCell[k.cell] = append(byCell[k.cell], at)
 	}
-	for _, cell := range e.small.cells {
+	for _, cell := range e.small.Cells {
 		e.white(u, f, form, cell, s)
 		for _, at := range byCell[int32(cell)] {
 			t := scores[int(pairs[at].cluster)*p:][:p]
@@ -527,8 +405,8 @@ func (e *streamed) Nested(with []int) (handover.NestedTest, error) {
 	if t.DF == 0 {
 		return t, nil
 	}
-	p := e.small.problem(form)
-	side, sideLo := e.small.response(e.moments)
+	p := e.small.Problem(form)
+	side, sideLo := e.small.Response(e.moments)
 	large := lsq.Factorize(p, nil)
 	if large.Rank() < p.P {
 		return t, errDependent
@@ -576,7 +454,7 @@ func (e *streamed) ExtraSS(columns [][]float64) (df int, ss float64, err error) 
 		if err != nil {
 			return 0, 0, err
 		}
-		side, sideLo := e.small.response(m)
+		side, sideLo := e.small.Response(m)
 		e.factor.Solve(side, sideLo, &sol)
 		left := make([]float64, n)
 		size := 0.0
