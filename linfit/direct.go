@@ -24,6 +24,7 @@ type direct struct {
 	clusters       *clusters
 	workers        int
 	found          solved
+	score          scoring
 
 	mu      sync.Mutex // guards what follows: a Factor uses its own scratch
 	problem lsq.Problem
@@ -274,10 +275,7 @@ func norm(a []float64) float64 {
 }
 
 func (e *direct) MeanTo(mean, grad []float64, m *design.Matrix, known []float64, from, to int) {
-	if known != nil {
-		known = known[from:to]
-	}
-	m.Form().MeanTo(mean[:to-from], grad, e.sol.B, e.sol.BLo, known, from)
+	e.score.meanTo(mean, grad, e.sol.B, e.sol.BLo, m, known, from, to)
 }
 
 func (e *direct) LeverageTo(dst []float64, m *design.Matrix, from, to int) {

@@ -27,6 +27,7 @@ type streamed struct {
 	dispersion float64
 	kind       Robust
 	clusters   *clusters
+	score      scoring
 
 	mu     sync.Mutex // guards what follows
 	small  *factored.Condensed
@@ -473,10 +474,7 @@ func (e *streamed) ExtraSS(columns [][]float64) (df int, ss float64, err error) 
 }
 
 func (e *streamed) MeanTo(mean, grad []float64, m *design.Matrix, known []float64, from, to int) {
-	if known != nil {
-		known = known[from:to]
-	}
-	m.Form().MeanTo(mean[:to-from], grad, e.b, e.blo, known, from)
+	e.score.meanTo(mean, grad, e.b, e.blo, m, known, from, to)
 }
 
 func (e *streamed) LeverageTo(dst []float64, m *design.Matrix, from, to int) {

@@ -171,3 +171,60 @@ func diagOf(at func(i, a int) *big.Float, mean *big.Float, rows []int, w []float
 	}
 	return s
 }
+
+// TestScorer: sums by level give the rows' products that the plain pass over
+// columns gives, without allocating.
+func TestScorer(t *testing.T) {
+	rng := rand.New(rand.NewPCG(5, 5))
+	const n = 3000
+	f := &Form{N: n}
+	num := func(low bool) Num {
+		v := Num{Hi: make([]float64, n)}
+		if low {
+			v.Lo = make([]float64, n)
+		}
+		for i := range n {
+			v.Hi[i] = rng.NormFloat64()
+			if low {
+				v.Lo[i] = v.Hi[i] * 0x1p-60
+			}
+		}
+		return v
+	}
+	f.Nums = []Num{num(false), num(true)}
+	for _, levels := range []int{3, 4} {
+		c := Cat{Levels: levels, Codes: make([]int32, n)}
+		for i := range n {
+			c.Codes[i] = int32(rng.IntN(levels))
+		}
+		f.Cats = append(f.Cats, c)
+	}
+	entry := func(e ...int8) []int8 { return e }
+	f.Cols = []Col{
+		{Num: -1}, {Num: 0}, {Num: 1},
+		{Num: -1, Cells: []Cell{{0, entry(-1, 1, 0)}}}, {Num: -1, Cells: []Cell{{0, entry(-1, 0, 1)}}},
+		{Num: 1, Cells: []Cell{{1, entry(0, 1, 1, 1)}}}, {Num: 1, Cells: []Cell{{1, entry(0, 0, 1, 1)}}},
+		{Num: 0, Cells: []Cell{{1, entry(0, 1, 0, 0)}, {0, entry(0, 0, 1)}}}, {Num: 0, Cells: []Cell{{0, entry(0, 1, 0)}, {1, entry(0, 0, 0, 1)}}},
+	}
+	b, blo := make([]float64, len(f.Cols)), make([]float64, len(f.Cols))
+	for j := range b {
+		b[j] = rng.NormFloat64()
+		blo[j] = b[j] * 0x1p-58
+	}
+	known := num(false).Hi
+	want, got := make([]float64, n-100), make([]float64, n-100)
+	f.MeanTo(want, nil, b, blo, known[100:], 100)
+	s := NewScorer(f, b, blo)
+	s.MeanTo(got, known[100:], f, 100)
+	for i := range got {
+		// Both sum in double-double; the last rounding may differ by one unit.
+		if d := got[i] - want[i]; d > 2e-16*(1+abs(want[i])) || -d > 2e-16*(1+abs(want[i])) {
+			t.Fatalf("row %d: %v, want %v", i, got[i], want[i])
+		}
+	}
+	if a := testing.AllocsPerRun(10, func() { s.MeanTo(got, nil, f, 100) }); a != 0 {
+		t.Errorf("%v allocations", a)
+	}
+}
+
+func abs(x float64) float64 { return max(x, -x) }
