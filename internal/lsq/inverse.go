@@ -59,7 +59,9 @@ func (f *Factor) whiten() *whitened {
 	}
 	w.ready = true
 	k := f.rank
-	w.plain = f.conditionBound() <= plainBound || 2*f.Condition() <= plainBound
+	// The closer estimate of the condition costs as much as G does when there
+	// are few rows; it is asked for only where it may spare many.
+	w.plain = f.conditionBound() <= plainBound || f.p.N > 64*f.rank && 2*f.Condition() <= plainBound
 	if !w.plain {
 		f.gram()
 		w.plain = !choleskyTo(w.l, w.g, k)
