@@ -184,12 +184,6 @@ const (
 	//	model: y ~ cat(m in ('A', 'B', 'C'))
 	codeEmptyLevel Code = "empty-level"
 
-	// codeEquation: the model is an equation, which has no design matrix.
-	//
-	//	csv: x,y\n1,2\n2,3\n3,5\n
-	//	model: y = a * exp(b * x) fitting a, b
-	codeEquation Code = "equation"
-
 	// codeMissingValues: used columns have missing or non-finite cells.
 	//
 	//	csv: x,y\n1,2\n,3\n3,NaN\n
@@ -230,6 +224,12 @@ const (
 	//	csv: m,x,y\nA,1,2\nA,2,3\nA,3,4\n
 	//	model: y ~ x + cat(m)
 	codeOneLevel Code = "one-level"
+
+	// codeParameterColumn: a parameter of an equation is named like a column.
+	//
+	//	csv: x,y,k\n1,2,1\n2,3,1\n3,5,1\n
+	//	model: y = k*x fitting k
+	codeParameterColumn Code = "parameter-column"
 
 	// codeRepeatedColumn: a category names a column twice.
 	//
@@ -336,7 +336,6 @@ func Codes() []Code {
 		codeDomain,
 		codeEmptyCells,
 		codeEmptyLevel,
-		codeEquation,
 		codeMissingValues,
 		codeNoColumns,
 		codeNotATerm,
@@ -344,6 +343,7 @@ func Codes() []Code {
 		codeNothingToRemove,
 		codeNumericByItself,
 		codeOneLevel,
+		codeParameterColumn,
 		codeRepeatedColumn,
 		codeRepeatedLevel,
 		codeResponseDomain,

@@ -38,21 +38,30 @@ func prepare(m *formula.Model, t *Table, opts *Options) (*Frame, *Error) {
 	if m == nil || t == nil {
 		return nil, &Error{Code: codeBadOption, Message: "the model or the table is nil", Hint: "give both"}
 	}
-	if m.Terms == nil {
-		return nil, &Error{Code: codeEquation, Text: m.Text, Span: m.Equation.Span(),
-			Message: "this model is an equation; it has no design matrix", Hint: "fit it with package nlfit, or write terms after ~"}
+	var x *expansion
+	var eq *Equation
+	var own [][]*rawTerm
+	var err *Error
+	if m.Terms != nil {
+		x, err = expand(m.Text, m.Terms)
+	} else {
+		eq, x, own, err = newEquation(m)
 	}
-	x, err := expand(m.Text, m.Terms)
 	if err != nil {
 		return nil, err
 	}
-	p := &Plan{model: m, compiled: compiled{text: m.Text, productIndex: make(map[string]int), entries: make(map[[3]int][]int8)}}
+	p := &Plan{eq: eq, own: own, model: m, compiled: compiled{text: m.Text, productIndex: make(map[string]int), entries: make(map[[3]int][]int8)}}
 	u, err := findUses(m, x)
 	if err != nil {
 		return nil, err
 	}
 	if err := u.check(t); err != nil {
 		return nil, err
+	}
+	if eq != nil {
+		if err := eq.checkNames(m, t); err != nil {
+			return nil, err
+		}
 	}
 	p.uses = u
 	p.kinds = make(map[string]Kind)
@@ -74,7 +83,14 @@ func prepare(m *formula.Model, t *Table, opts *Options) (*Frame, *Error) {
 		return nil, err
 	}
 	f.Matrix = &Matrix{form: form}
-	p.describe()
+	if f.Matrix.parts, err = p.partsAt(sel.table, sel.rows); err != nil {
+		return nil, err
+	}
+	if eq != nil {
+		p.describeEquation()
+	} else {
+		p.describe()
+	}
 	if !opts.NoRankCheck {
 		if err := f.checkRank(); err != nil {
 			return nil, err
@@ -117,6 +133,9 @@ func (p *Plan) frame(t *Table, opts *Options) (*Frame, *Error) {
 		return nil, err
 	}
 	f.Matrix = &Matrix{form: form}
+	if f.Matrix.parts, err = p.partsAt(sel.table, sel.rows); err != nil {
+		return nil, err
+	}
 	if f.Known, f.KnownLo, err = p.knownAt(sel.table, sel.rows); err != nil {
 		return nil, err
 	}
@@ -136,7 +155,11 @@ func (p *Plan) Matrix(t *Table) (*Matrix, error) {
 	if err != nil {
 		return nil, err
 	}
-	return &Matrix{form: form}, nil
+	parts, err := p.partsAt(t, nil)
+	if err != nil {
+		return nil, err
+	}
+	return &Matrix{form: form, parts: parts}, nil
 }
 
 func (p *Plan) rightSide(t *Table) (*factored.Form, *Error) {
@@ -296,7 +319,12 @@ func (p *Plan) learn(x *expansion, sel *selection, f *Frame) (*factored.Form, *E
 	if cats, err = c.resolveNests(catIndex, cats); err != nil {
 		return nil, err
 	}
-	if c.coded, c.from, err = c.code(c.terms); err != nil {
+	if p.eq != nil {
+		err = p.codeParameters(p.own)
+	} else {
+		c.coded, c.from, err = c.code(c.terms)
+	}
+	if err != nil {
 		return nil, err
 	}
 	if len(c.coded) == 0 {
@@ -305,7 +333,7 @@ func (p *Plan) learn(x *expansion, sel *selection, f *Frame) (*factored.Form, *E
 	}
 	// Before anything of the size of the columns is made.
 	if n, k := t.rows, len(c.coded); n < k {
-		return nil, &Error{Code: codeTooFewRows, Text: p.text, Span: p.model.Terms.Pos,
+		return nil, &Error{Code: codeTooFewRows, Text: p.text, Span: p.rightSpan(),
 			Message: fmt.Sprintf("the model has %s and %s", errtext.Count(k, "column"), errtext.Count(n, "fitted row")),
 			Hint:    "give at least as many rows as columns, or take terms out"}
 	}
@@ -377,4 +405,12 @@ func (c *compiled) form(t *Table, rows []int) (*factored.Form, *Error) {
 		return nil, err
 	}
 	return form, nil
+}
+
+// rightSpan is the place of the right side in the model text.
+func (p *Plan) rightSpan() formula.Span {
+	if p.eq != nil {
+		return p.model.Equation.Span()
+	}
+	return p.model.Terms.Pos
 }

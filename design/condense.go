@@ -45,7 +45,7 @@ func triangleByBlocks(form *factored.Form, roots []float64) *lsq.Problem {
 	for from := 0; from < n; from += block {
 		to := min(n, from+block)
 		part := formRows(form, from, to)
-		m := Matrix{part}
+		m := Matrix{form: part}
 		rows := to - from
 		old := 0
 		if r != nil {

@@ -71,10 +71,13 @@ func (c *compiled) factorPart(f codedFactor, choice int) string {
 type wording struct {
 	c        *compiled
 	quantity string
+	terms    []*term       // of the model at hand: a parameter's own in an equation
+	coded    []codedColumn // its columns
+	equation bool
 }
 
 func (p *Plan) wording() *wording {
-	w := &wording{c: &p.compiled, quantity: p.Response()}
+	w := &wording{c: &p.compiled, quantity: p.Response(), terms: p.terms, coded: p.coded}
 	r := p.model.Response
 	e := p.model.Errors
 	if e == nil {
@@ -139,6 +142,9 @@ func (w *wording) meaning(col codedColumn) string {
 	switch {
 	case len(nums) > 0:
 		subject = joinSlopes(nums)
+		if w.equation {
+			subject += " in " + w.quantity
+		}
 	default:
 		subject = w.quantity
 	}
@@ -236,7 +242,7 @@ func joinSlopes(nums []string) string {
 func (w *wording) zeros(t *term, level bool) []string {
 	var out []string
 	more := false
-	for _, u := range w.c.terms {
+	for _, u := range w.terms {
 		if len(u.nums) == 0 || !level && !within(t, u) {
 			continue
 		}
@@ -271,7 +277,7 @@ func (w *wording) zeros(t *term, level bool) []string {
 func (w *wording) crossed(t *term, col codedColumn) []string {
 	var out []string
 	var seen []int
-	for _, u := range w.c.coded {
+	for _, u := range w.coded {
 		v := w.c.terms[u.term]
 		if u.term == col.term || !slices.Equal(v.nums, t.nums) {
 			continue

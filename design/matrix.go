@@ -10,7 +10,8 @@ import (
 // level numbers. It satisfies gonum's mat.Matrix; Expand makes it dense. It is
 // immutable; goroutines may share it.
 type Matrix struct {
-	form *factored.Form
+	form  *factored.Form
+	parts [][]float64 // of an equation, see Parts
 }
 
 var _ mat.Matrix = (*Matrix)(nil)

@@ -96,7 +96,12 @@ func TestModelRefusals(t *testing.T) {
 		{"plant", "porosity ~ num(furnace='F1') + num(furnace='F2') + num(furnace='F10')", "", ""},
 		{"plant", "porosity ~ hold + num(2*hold + 3)", "porosity ~ hold", ""},
 		{"plant", "porosity ~ hold + num(hold/3 + temp/7) + temp", "", ""},
-		{"plant", "porosity = a*exp(-k*hold) fitting a, k", "", ""},
+		{"plant", "porosity = a*exp(-k*hold) + b fitting a, k", "fitting b", "porosity = a*exp(-k*hold) + b fitting a, k, b"},
+		{"plant", "porosity = a*exp(-k*holt) fitting a, k", "hold", "porosity = a*exp(-k*hold) fitting a, k"},
+		{"plant", "porosity = a*exp(-temp*hold) fitting a, temp", "another name", "porosity = a*exp(-k*hold) fitting a, k"},
+		{"plant", "porosity = a*furnace fitting a", "", ""},
+		{"plant", "porosity = a*exp(-k*hold) fitting a, k ~ oven_1 + num(2*oven_1)", "model of k", "porosity = a*exp(-k*hold) fitting a, k ~ oven_1"},
+		{"plant", "porosity = a*log(hold - 10) fitting a", "", "porosity = a*log(hold) fitting a"},
 	} {
 		table, err := ReadCSV(strings.NewReader(refusalData[c.data]), nil)
 		if err != nil {

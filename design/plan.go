@@ -23,6 +23,8 @@ type Options struct {
 type Plan struct {
 	compiled
 	model   *formula.Model
+	eq      *Equation       // nil for a model in terms
+	own     [][]*rawTerm    // the terms of each parameter of an equation
 	kinds   map[string]Kind // of the columns used, as in the fitted rows
 	columns []PlanColumn
 	list    []PlanTerm

@@ -39,7 +39,7 @@ func rankProblem(form *factored.Form) *lsq.Problem {
 }
 
 func expandForm(form *factored.Form) *lsq.Problem {
-	m := Matrix{form}
+	m := Matrix{form: form}
 	n, p := m.Dims()
 	q := &lsq.Problem{N: n, P: p, X: make([]float64, n*p), XLo: make([]float64, n*p)}
 	for j := range p {
@@ -49,12 +49,19 @@ func expandForm(form *factored.Form) *lsq.Problem {
 }
 
 func (f *Frame) checkRank() *Error {
-	form := f.Matrix.form
+	if f.Plan.eq != nil {
+		return f.checkEquationRank()
+	}
+	return f.Plan.dependent(f.Matrix.form, identities(f.Matrix.form))
+}
+
+// identities are the dependencies between the columns of a form.
+func identities(form *factored.Form) []lsq.Identity {
 	q := rankProblem(form)
 	if lsq.Factorize(q, nil).Rank() == q.P {
 		return nil
 	}
-	return f.Plan.dependent(form, lsq.Identities(q))
+	return lsq.Identities(q)
 }
 
 // dependent builds the refusal of dependent columns.

@@ -14,11 +14,12 @@ import (
 
 // A use is one place where a model names a column, and what it needs there.
 type use struct {
-	name  string
-	span  formula.Span
-	as    need
-	level *formula.Level // as comparedWith
-	left  bool           // response, out of, per, weighted, counted
+	name     string
+	span     formula.Span
+	as       need
+	level    *formula.Level // as comparedWith
+	left     bool           // response, out of, per, weighted, counted
+	equation bool           // bare in an equation, where it might be a parameter not declared
 }
 
 type need uint8
@@ -75,6 +76,9 @@ func findUses(m *formula.Model, x *expansion) (*uses, *Error) {
 	}
 	for _, e := range x.known {
 		u.arithmetic(e, false)
+	}
+	if m.Equation != nil {
+		u.equationUses(m)
 	}
 	sort.SliceStable(u.list, func(i, j int) bool { return u.list[i].span.Start < u.list[j].span.Start })
 	return u, nil
@@ -184,6 +188,14 @@ func (u *uses) unknown(t *Table, absent []string, first *use) *Error {
 		e.Message = "the data have no columns " + errtext.And(words)
 	}
 	e.Hint = u.suggest(t, names, absent[0])
+	if first.equation {
+		word := formula.QuoteName(absent[0])
+		e.Message = fmt.Sprintf("%s is neither a column of the data nor a declared parameter", word)
+		e.Hint = fmt.Sprintf("declare it after fitting: fitting %s", word)
+		if near, ok := errtext.Nearest(absent[0], names); ok {
+			e.Hint = fmt.Sprintf("did you mean the column %s? if it is a parameter, declare it after fitting", formula.QuoteName(near))
+		}
+	}
 	return e
 }
 

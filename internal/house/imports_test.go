@@ -14,7 +14,7 @@ const module = "example.com/trammel"
 // import from the module. An arrow changes only together with DEVELOPERS.md.
 var arrows = map[string][]string{
 	"formula":           {"internal/errtext"},
-	"design":            {"formula", "internal/dd", "internal/errtext", "internal/expr", "internal/factored", "internal/lsq"},
+	"design":            {"formula", "internal/dd", "internal/errtext", "internal/expr", "internal/factored", "internal/lsq", "internal/tape"},
 	"":                  {"design", "formula", "internal/dd", "internal/dist", "internal/errtext", "internal/factored", "internal/handover", "internal/lsq"},
 	"linfit":            {"", "design", "formula", "internal/dd", "internal/errtext", "internal/factored", "internal/handover", "internal/lsq"},
 	"examples/fitfile":  {"", "design", "linfit"},
@@ -29,6 +29,7 @@ var arrows = map[string][]string{
 	"internal/house":    {},
 	"internal/lsq":      {"internal/dd"},
 	"internal/scenario": {},
+	"internal/tape":     {"formula"},
 }
 
 // outside is what the module may import from elsewhere beside the standard
