@@ -38,8 +38,9 @@ type Fit struct {
 
 	Deviance, NullDeviance, Pearson float64 // generalized linear models, else NaN
 
-	End   End
-	Notes []Note
+	End    End
+	Notes  []Note
+	Minima []Minimum // of a search: the one reached from given starts first, else by ResidualSS; else nil
 
 	Engine Engine
 }
@@ -54,6 +55,13 @@ type End struct {
 
 // A Note is one plain sentence about the fit, with a code for programs.
 type Note struct{ Code, Text string }
+
+// A Minimum is one distinct minimum that a search found.
+type Minimum struct {
+	ResidualSS float64
+	Estimates  []float64 // p
+	Starts     int       // how many starts reached it
+}
 
 // An Engine answers the numeric questions about a fit that need its data. All
 // methods are safe for concurrent use.

@@ -1,0 +1,177 @@
+package search
+
+import (
+	"math"
+	"slices"
+)
+
+// A start is a point with its sum of squares after the linear parameters are
+// found.
+type start struct {
+	theta []float64
+	rss   float64
+}
+
+// starts draws points from an additive recurrence on the powers of the
+// generalised golden ratio (H. Weyl; the constants after M. Roberts, recalled),
+// shifted by the seed.
+func (s *solver) starts() [][]float64 {
+	p := s.p
+	var sought []int
+	for j := range p.P {
+		if !p.Linear[j] && p.Range[j].Low < p.Range[j].High {
+			sought = append(sought, j)
+		}
+	}
+	d := 2 * len(sought) // a second coordinate gives each its sign
+	n := min(mostStarts, startsPerParameter*max(1, len(sought)))
+	if len(sought) == 0 {
+		n = 1
+	}
+	n = min(n, max(1, s.budget/3))
+	phi := 2.0
+	for range 40 {
+		phi = math.Pow(1+phi, 1/float64(d+1))
+	}
+	shift := float64(s.o.Seed%1_000_003) / 1_000_003
+	out := make([][]float64, n)
+	for i := range out {
+		theta := make([]float64, p.P)
+		for j := range theta {
+			if !p.Linear[j] {
+				theta[j] = p.Range[j].Low
+			}
+		}
+		for k, j := range sought {
+			u := fraction(0.5 + shift + float64(i+1)*math.Pow(1/phi, float64(k+1)))
+			v := fraction(0.5 + shift + float64(i+1)*math.Pow(1/phi, float64(len(sought)+k+1)))
+			theta[j] = p.Range[j].at(u, v)
+		}
+		s.clip(theta)
+		out[i] = theta
+	}
+	return out
+}
+
+func fraction(x float64) float64 { return x - math.Floor(x) }
+
+// at is the point u of the way through a range; v chooses the sign of a log range
+// on both sides of 0.
+func (r Range) at(u, v float64) float64 {
+	if !r.Log {
+		return r.Low + u*(r.High-r.Low)
+	}
+	low, high, sign := r.Low, r.High, 1.0
+	switch {
+	case r.High <= 0:
+		low, high, sign = -r.High, -r.Low, -1
+	case r.Low < 0:
+		if v < 0.25 {
+			sign, high = -1, -r.Low
+		}
+		low = high * 1e-5
+	}
+	if low <= 0 {
+		low = high * 1e-5
+	}
+	return sign * math.Exp(math.Log(low)+u*(math.Log(high)-math.Log(low)))
+}
+
+// rank finds the linear parameters of every start and sorts by sum of squares.
+func (s *solver) rank(points [][]float64) []start {
+	all := make([]start, len(points))
+	s.parallel(len(points), func(i int) {
+		w := s.newWork()
+		theta := slices.Clone(points[i])
+		all[i] = start{theta, s.project(w, theta)}
+	})
+	var out []start
+	for _, a := range all {
+		if a.rss-a.rss == 0 {
+			out = append(out, a)
+		}
+	}
+	sortStarts(out)
+	return out
+}
+
+func sortStarts(list []start) {
+	slices.SortStableFunc(list, func(a, b start) int {
+		switch {
+		case a.rss < b.rss:
+			return -1
+		case a.rss > b.rss:
+			return 1
+		}
+		return 0
+	})
+}
+
+// project puts the best values of the linear parameters into theta and returns
+// the sum of squares; +Inf when the model is not finite there.
+func (s *solver) project(w *work, theta []float64) float64 {
+	p := s.p
+	var linear []int
+	for j, l := range p.Linear {
+		if l {
+			linear = append(linear, j)
+			theta[j] = 0
+		}
+	}
+	s.count()
+	if len(linear) == 0 {
+		if !p.Eval(theta, w.f, nil, nil, nil) {
+			return math.Inf(1)
+		}
+		return s.residual(w)
+	}
+	if !p.Eval(theta, w.f, w.jac, nil, nil) {
+		return math.Inf(1)
+	}
+	s.residual(w)
+	// f is affine: columns of the Jacobian times the parameters, and f at 0.
+	n := p.N
+	a := w.scratch[:n*len(linear)]
+	for k, j := range linear {
+		copy(a[k*n:(k+1)*n], w.jac[j*n:(j+1)*n])
+		for i := range n {
+			if p.Root != nil {
+				a[k*n+i] *= p.Root[i]
+			}
+			if v := a[k*n+i]; v-v != 0 {
+				return math.Inf(1)
+			}
+		}
+	}
+	x := make([]float64, len(linear))
+	rss := leastSquares(a, n, len(linear), w.r, x)
+	for k, j := range linear {
+		theta[j] = x[k]
+	}
+	if p.Low != nil {
+		before := slices.Clone(theta)
+		s.clip(theta)
+		if !slices.Equal(before, theta) {
+			s.count()
+			if !p.Eval(theta, w.f, nil, nil, nil) {
+				return math.Inf(1)
+			}
+			return s.residual(w)
+		}
+	}
+	return rss
+}
+
+// residual fills w.r from w.f and returns its sum of squares.
+func (s *solver) residual(w *work) float64 {
+	sum := 0.0
+	for i, y := range s.p.Y {
+		r := y - w.f[i]
+		if s.p.Root != nil {
+			r *= s.p.Root[i]
+		}
+		w.r[i] = r
+		sum += r * r
+	}
+	return sum
+}

@@ -1,0 +1,151 @@
+package nlfit_test
+
+import (
+	"context"
+	"encoding/json"
+	"fmt"
+	"math"
+	"os"
+	"path/filepath"
+	"slices"
+	"strconv"
+	"strings"
+	"testing"
+	"time"
+
+	"example.com/trammel/design"
+	"example.com/trammel/internal/digits"
+	"example.com/trammel/nlfit"
+)
+
+// A certifiedSet is one nonlinear set of testdata/strd/certified.json (NIST
+// Statistical Reference Datasets; float64_input: 20-digit answers by Newton's
+// method at 80 digits for the data as float64 numbers).
+type certifiedSet struct {
+	Name       string
+	Kind       string
+	Response   string
+	Model      string
+	Parameters []string
+	Starts     [][]string
+	Exact      struct {
+		Estimates  []string
+		Deviations []string `json:"standard_deviations"`
+		RSS        string
+	} `json:"float64_input"`
+}
+
+func certifiedSets(t *testing.T) []certifiedSet {
+	t.Helper()
+	text, err := os.ReadFile("../testdata/strd/certified.json")
+	if err != nil {
+		t.Fatal(err)
+	}
+	var all struct{ Datasets []certifiedSet }
+	if err := json.Unmarshal(text, &all); err != nil {
+		t.Fatal(err)
+	}
+	sets := slices.DeleteFunc(all.Datasets, func(s certifiedSet) bool { return s.Kind != "nonlinear" })
+	if len(sets) != 19 {
+		t.Fatalf("%d sets", len(sets))
+	}
+	return sets
+}
+
+func readTable(t testing.TB, path string) *design.Table {
+	t.Helper()
+	file, err := os.Open(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer file.Close()
+	table, err := design.ReadCSV(file, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return table
+}
+
+// text is the set's equation; start 0 declares no starts.
+func (s *certifiedSet) text(start int) string {
+	var params []string
+	for k, name := range s.Parameters {
+		if start > 0 {
+			v, err := strconv.ParseFloat(s.Starts[start-1][k], 64)
+			if err != nil {
+				panic(err)
+			}
+			name += " start " + strconv.FormatFloat(v, 'f', -1, 64)
+		}
+		params = append(params, name)
+	}
+	return s.Response + " = " + s.Model + " fitting " + strings.Join(params, ", ")
+}
+
+// TestStarted: the 19 sets from both published starts.
+func TestStarted(t *testing.T) {
+	passed := 0
+	for _, s := range certifiedSets(t) {
+		table := readTable(t, filepath.Join("../testdata/strd/nonlinear", s.Name+".csv"))
+		for start := 1; start <= 2; start++ {
+			begin := time.Now()
+			r, err := nlfit.Fit(context.Background(), s.text(start), table, nil)
+			took := time.Since(begin)
+			if r == nil {
+				t.Errorf("%s from start %d: %v", s.Name, start, err)
+				continue
+			}
+			worst, se := 16.0, 16.0
+			b, dev := r.Estimates(), r.StdErrors()
+			for j := range b {
+				worst = math.Min(worst, digits.AgreeString(b[j], s.Exact.Estimates[j]))
+				se = math.Min(se, digits.AgreeString(dev[j], s.Exact.Deviations[j]))
+			}
+			ok := err == nil && worst >= 10 && (se >= 9 || s.Name == "Lanczos1" && se >= 3)
+			if ok {
+				passed++
+			} else {
+				t.Errorf("%s from start %d: estimates to %.1f digits, standard errors to %.1f, RSS %g (want %s), %s, %v", s.Name, start, worst, se, r.Goodness().ResidualSS, s.Exact.RSS, r.End().Reason, err)
+			}
+			fmt.Printf("%-9s start %d  estimates %5.1f  std errors %5.1f  %s after %d, %v\n", s.Name, start, worst, se, r.End().Reason, r.End().Iterations, took)
+		}
+	}
+	t.Logf("%d of 38", passed)
+}
+
+// TestStartFree: the 19 sets with no starts at all, up to the exchange of equal
+// terms.
+func TestStartFree(t *testing.T) {
+	passed := 0
+	for _, s := range certifiedSets(t) {
+		table := readTable(t, filepath.Join("../testdata/strd/nonlinear", s.Name+".csv"))
+		begin := time.Now()
+		r, err := nlfit.Fit(context.Background(), s.text(0), table, nil)
+		took := time.Since(begin)
+		if r == nil {
+			t.Errorf("%s: %v", s.Name, err)
+			continue
+		}
+		worst := 16.0
+		b := r.Estimates()
+		got, want := slices.Clone(b), make([]float64, len(b))
+		for j := range b {
+			want[j], _ = strconv.ParseFloat(s.Exact.Estimates[j], 64)
+			got[j], want[j] = math.Abs(got[j]), math.Abs(want[j])
+		}
+		slices.Sort(got)
+		slices.Sort(want)
+		for j := range got {
+			worst = math.Min(worst, digits.Agree(got[j], want[j]))
+		}
+		rss := digits.AgreeString(r.Goodness().ResidualSS, s.Exact.RSS)
+		ok := err == nil && worst >= 10
+		if ok {
+			passed++
+		} else {
+			t.Errorf("%s: estimates to %.1f digits, RSS %g (want %s), %s, %v", s.Name, worst, r.Goodness().ResidualSS, s.Exact.RSS, r.End().Reason, err)
+		}
+		fmt.Printf("%-9s free  estimates %5.1f  RSS %5.1f  %s after %d, %v\n", s.Name, worst, rss, r.End().Reason, r.End().Iterations, took)
+	}
+	t.Logf("%d of 19", passed)
+}
