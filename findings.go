@@ -170,11 +170,39 @@ func influential(f *handover.Fit, stats *handover.RowStats) []Note {
 	return out
 }
 
+// confounded names the pairs of an equation's coefficients whose estimates are
+// correlated beyond nearConfounded: the data hardly tell them apart.
+func confounded(f *handover.Fit) []Note {
+	const nearConfounded = 0.99
+	v := f.Engine.Covariance()
+	if v == nil {
+		return nil
+	}
+	p := len(f.Estimates)
+	columns := f.Plan.Columns()
+	var pairs []string
+	for i := range p {
+		for j := range i {
+			r := v[i*p+j] / math.Sqrt(v[i*p+i]*v[j*p+j])
+			if math.Abs(r) > nearConfounded && len(pairs) < shown {
+				pairs = append(pairs, fmt.Sprintf("%s and %s (correlation %.4f)", columns[j].Name, columns[i].Name, r))
+			}
+		}
+	}
+	if pairs == nil {
+		return nil
+	}
+	return []Note{{"near-dependency", fmt.Sprintf("Nearly confounded: %s. The data can hardly tell them apart; predictions within the data do not suffer.", errtext.And(pairs))}}
+}
+
 // nearDependencies names columns that are nearly combinations of each other.
 func nearDependencies(f *handover.Fit) []Note {
 	p := len(f.Estimates)
 	if p < 2 {
 		return nil
+	}
+	if f.Plan.Equation() != nil {
+		return confounded(f)
 	}
 	if p > mostColumns || float64(len(f.Frame.Y))*float64(p)*float64(p) > most {
 		return []Note{{"not-checked", "Near-dependencies were not looked for: the fit is too large to take its columns apart."}}

@@ -50,7 +50,14 @@ type jsonSummary struct {
 		Measure    number `json:"measure"`
 		Tolerance  number `json:"tolerance"`
 	} `json:"end"`
-	Notes []string `json:"notes"`
+	Minima *[]jsonMinimum `json:"minima,omitempty"` // of a search only
+	Notes  []string       `json:"notes"`
+}
+
+type jsonMinimum struct {
+	ResidualSS number            `json:"residual_ss"`
+	Parameters map[string]number `json:"parameters"`
+	Starts     int               `json:"starts"`
 }
 
 type jsonCoefficient struct {
@@ -102,6 +109,16 @@ func (s *Summary) WriteJSON(w io.Writer) error {
 	}
 	out.End.Reason, out.End.Iterations = s.End.Reason, s.End.Iterations
 	out.End.Measure, out.End.Tolerance = number(s.End.Measure), number(s.End.Tolerance)
+	if s.Minima != nil {
+		list := make([]jsonMinimum, len(s.Minima))
+		for i, m := range s.Minima {
+			list[i] = jsonMinimum{number(m.ResidualSS), make(map[string]number), m.Starts}
+			for j, v := range m.Estimates {
+				list[i].Parameters[s.Coefficients[j].Name] = number(v)
+			}
+		}
+		out.Minima = &list
+	}
 	for _, list := range [][]Note{s.Notes, s.Findings} {
 		for _, n := range list {
 			out.Notes = append(out.Notes, n.Text)

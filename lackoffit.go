@@ -118,6 +118,9 @@ func repeats(f *handover.Fit) (group []int32, groups int) {
 	for k := range form.Nums {
 		s.byValue(form.Nums[k].Hi, form.Nums[k].Lo)
 	}
+	for _, part := range f.Frame.Matrix.Parts() {
+		s.byValue(part, nil)
+	}
 	if f.Frame.Known != nil {
 		s.byValue(f.Frame.Known, f.Frame.KnownLo)
 	}

@@ -19,6 +19,14 @@ type SummaryOptions struct {
 	SkipChecks bool
 }
 
+// A Minimum is one distinct minimum of the residual sum of squares that a search
+// found.
+type Minimum struct {
+	ResidualSS float64
+	Estimates  []float64 // in the order of the coefficients
+	Starts     int       // how many starts reached it
+}
+
 // A Summary is the answer to the usual questions about a result. WriteReport
 // and WriteJSON are both made from it.
 type Summary struct {
@@ -39,9 +47,10 @@ type Summary struct {
 	LackOfFit    *LackOfFitTest // nil when not defined or not asked for
 
 	End      End
-	Notes    []Note // remarks about the fit
-	Findings []Note // what to look at; codes such as "influential-rows" and "near-dependency"
-	Checked  bool   // the checks behind Findings were made
+	Minima   []Minimum // the distinct minima of a search, the one reached from given starts first; nil for a direct solution
+	Notes    []Note    // remarks about the fit
+	Findings []Note    // what to look at; codes such as "influential-rows" and "near-dependency"
+	Checked  bool      // the checks behind Findings were made
 
 	weighted bool // the standard deviation is that of weight 1
 }
@@ -68,6 +77,9 @@ func Summarize(r Result, opts *SummaryOptions) (*Summary, error) {
 	s := &Summary{
 		Model: r.Model().String(), Response: f.Plan.Response(), Fitter: f.Fitter, Path: f.Path, Robust: f.Robust, Exact: f.ExactFit,
 		Level: level, weighted: r.Model().Weighted != nil, Rows: r.Rows(), Freedom: f.Freedom, Goodness: r.Goodness(), End: r.End(), Notes: r.Notes(),
+	}
+	for _, m := range f.Minima {
+		s.Minima = append(s.Minima, Minimum{m.ResidualSS, append([]float64(nil), m.Estimates...), m.Starts})
 	}
 	s.Notes = append(s.Notes, s.remarks()...)
 	if s.Coefficients, err = Coefficients(r, level); err != nil {

@@ -354,14 +354,26 @@ func finish(f *design.Frame, m *model, found *search.Result, root []float64) (*h
 		out.Minima = append(out.Minima, handover.Minimum{ResidualSS: min.RSS, Estimates: min.Theta, Starts: min.Starts})
 	}
 	if k := e.factor.Rank(); k < len(free) && found.End.Reason != "budget" {
+		// A direction is judged by what each coefficient's move does to the fit.
 		var null [][]float64
 		for _, v := range e.factor.NullVectors() {
 			all := make([]float64, p)
 			for q, j := range free {
-				all[j] = v[q]
+				norm := 0.0
+				for _, x := range e.problem.X[q*m.n : (q+1)*m.n] {
+					norm = math.Hypot(norm, x)
+				}
+				all[j] = v[q] * norm
+			}
+			if slices.Max(all) == 0 && slices.Min(all) == 0 {
+				// The fit does not feel the coefficient at all.
+				for q, j := range free {
+					all[j] = v[q]
+				}
 			}
 			null = append(null, all)
 		}
+		out.End.Reason = "singular"
 		return out, singularError(f, null)
 	}
 	return out, nil

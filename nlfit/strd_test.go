@@ -3,7 +3,6 @@ package nlfit_test
 import (
 	"context"
 	"encoding/json"
-	"fmt"
 	"math"
 	"os"
 	"path/filepath"
@@ -11,7 +10,6 @@ import (
 	"strconv"
 	"strings"
 	"testing"
-	"time"
 
 	"example.com/trammel/design"
 	"example.com/trammel/internal/digits"
@@ -88,9 +86,7 @@ func TestStarted(t *testing.T) {
 	for _, s := range certifiedSets(t) {
 		table := readTable(t, filepath.Join("../testdata/strd/nonlinear", s.Name+".csv"))
 		for start := 1; start <= 2; start++ {
-			begin := time.Now()
 			r, err := nlfit.Fit(context.Background(), s.text(start), table, nil)
-			took := time.Since(begin)
 			if r == nil {
 				t.Errorf("%s from start %d: %v", s.Name, start, err)
 				continue
@@ -107,7 +103,6 @@ func TestStarted(t *testing.T) {
 			} else {
 				t.Errorf("%s from start %d: estimates to %.1f digits, standard errors to %.1f, RSS %g (want %s), %s, %v", s.Name, start, worst, se, r.Goodness().ResidualSS, s.Exact.RSS, r.End().Reason, err)
 			}
-			fmt.Printf("%-9s start %d  estimates %5.1f  std errors %5.1f  %s after %d, %v\n", s.Name, start, worst, se, r.End().Reason, r.End().Iterations, took)
 		}
 	}
 	t.Logf("%d of 38", passed)
@@ -119,9 +114,7 @@ func TestStartFree(t *testing.T) {
 	passed := 0
 	for _, s := range certifiedSets(t) {
 		table := readTable(t, filepath.Join("../testdata/strd/nonlinear", s.Name+".csv"))
-		begin := time.Now()
 		r, err := nlfit.Fit(context.Background(), s.text(0), table, nil)
-		took := time.Since(begin)
 		if r == nil {
 			t.Errorf("%s: %v", s.Name, err)
 			continue
@@ -138,14 +131,12 @@ func TestStartFree(t *testing.T) {
 		for j := range got {
 			worst = math.Min(worst, digits.Agree(got[j], want[j]))
 		}
-		rss := digits.AgreeString(r.Goodness().ResidualSS, s.Exact.RSS)
 		ok := err == nil && worst >= 10
 		if ok {
 			passed++
 		} else {
 			t.Errorf("%s: estimates to %.1f digits, RSS %g (want %s), %s, %v", s.Name, worst, r.Goodness().ResidualSS, s.Exact.RSS, r.End().Reason, err)
 		}
-		fmt.Printf("%-9s free  estimates %5.1f  RSS %5.1f  %s after %d, %v\n", s.Name, worst, rss, r.End().Reason, r.End().Iterations, took)
 	}
 	t.Logf("%d of 19", passed)
 }

@@ -1,7 +1,8 @@
 // Command fitfile fits one model to one data file and prints a report, or JSON.
 //
-//	go run ./examples/fitfile [-json] [-level 0.95] [-set-aside] -data FILE.csv 'MODEL TEXT'
+//	go run ./examples/fitfile [-json] [-level 0.95] [-set-aside] [-seed 0] [-budget 0] -data FILE.csv 'MODEL TEXT'
 //
+// Terms are fitted by package linfit, equations by package nlfit.
 // Refusals go to standard error, the plain sentence first, with exit status 1.
 package main
 
@@ -16,7 +17,9 @@ import (
 
 	"example.com/trammel"
 	"example.com/trammel/design"
+	"example.com/trammel/formula"
 	"example.com/trammel/linfit"
+	"example.com/trammel/nlfit"
 )
 
 func main() {
@@ -26,7 +29,7 @@ func main() {
 	os.Exit(code)
 }
 
-const usage = "usage: fitfile [-json] [-level 0.95] [-set-aside] -data FILE.csv 'MODEL TEXT'\n"
+const usage = "usage: fitfile [-json] [-level 0.95] [-set-aside] [-seed 0] [-budget 0] -data FILE.csv 'MODEL TEXT'\n"
 
 // run does all the work and returns the exit status.
 func run(ctx context.Context, args []string, stdout, stderr io.Writer) int {
@@ -34,6 +37,8 @@ func run(ctx context.Context, args []string, stdout, stderr io.Writer) int {
 	flags.SetOutput(io.Discard) // refusals are worded here
 	asJSON := flags.Bool("json", false, "print JSON instead of a report")
 	level := flags.Float64("level", 0.95, "confidence level of the intervals, in (0, 1)")
+	seed := flags.Uint64("seed", 0, "equations: chooses the starts that the search tries")
+	budget := flags.Int("budget", 0, "equations: evaluations the search may use; 0 for the default")
 	setAside := flags.Bool("set-aside", false, "leave incomplete rows out instead of refusing them")
 	data := flags.String("data", "", "CSV file with a header line")
 	fail := func(err error) int {
@@ -67,7 +72,16 @@ func run(ctx context.Context, args []string, stdout, stderr io.Writer) int {
 	if err != nil {
 		return fail(err)
 	}
-	result, err := linfit.Fit(ctx, flags.Arg(0), table, &linfit.Options{SetAside: *setAside})
+	model, err := formula.Parse(flags.Arg(0))
+	if err != nil {
+		return fail(err)
+	}
+	var result trammel.Result
+	if model.Equation != nil {
+		result, err = nlfit.Fit(ctx, flags.Arg(0), table, &nlfit.Options{SetAside: *setAside, Seed: *seed, Budget: *budget})
+	} else {
+		result, err = linfit.Fit(ctx, flags.Arg(0), table, &linfit.Options{SetAside: *setAside})
+	}
 	// An early-ended fit gives both a partial result and an error.
 	if result != nil {
 		if werr := write(stdout, result, *level, *asJSON); werr != nil && err == nil {

@@ -44,7 +44,7 @@ func TestRefusals(t *testing.T) {
 		{"unknown column", []string{"-data", furnaces, "porosity ~ holt"}, "design: 1:12: "},
 		{"dependent columns", []string{"-data", furnaces, "porosity ~ oven_1 + oven_2 + oven_3 + oven_4"}, "design: 1:12: columns depend on each other: "},
 		{"another fitter's model", []string{"-data", furnaces, "porosity ~ hold as gamma"}, "linfit: "},
-		{"an equation", []string{"-data", furnaces, "porosity = a*exp(-k*hold) fitting a, k"}, "linfit: "},
+		{"a name not declared", []string{"-data", furnaces, "porosity = a*exp(-k*hold) fitting a"}, "design: 1:19: k is neither a column"},
 	} {
 		status, out, errs := call(c.args...)
 		if status != 1 || out != "" || !strings.HasPrefix(errs, c.first) {
@@ -77,6 +77,31 @@ func TestJSON(t *testing.T) {
 	status, out, errs = call("-data", furnaces, "porosity ~ hold * cat(furnace)")
 	if status != 0 || errs != "" || !strings.Contains(out, "hold by furnace='F3'") {
 		t.Errorf("status %d: %s\n%s", status, errs, out)
+	}
+}
+
+// TestEarlyEnd: a search that ends early prints what it has, says why on standard
+// error, and has status 1.
+func TestEarlyEnd(t *testing.T) {
+	for _, c := range []struct {
+		args   []string
+		reason string
+		first  string
+	}{
+		{[]string{"-json", "-data", furnaces, "porosity = a*b*exp(-k*hold) fitting a, b, k"}, "singular", "nlfit: 1:12: a and b cannot be told apart"},
+		{[]string{"-json", "-budget", "3", "-data", furnaces, "porosity = a*exp(-k*hold) fitting a start 1, k start 1"}, "budget", "nlfit: the search used its "},
+	} {
+		status, out, errs := call(c.args...)
+		var got struct {
+			End    struct{ Reason string }
+			Minima []struct{ Parameters map[string]float64 }
+		}
+		if err := json.Unmarshal([]byte(out), &got); err != nil {
+			t.Fatalf("%v: %s", err, out)
+		}
+		if status != 1 || got.End.Reason != c.reason || !strings.HasPrefix(errs, c.first) || len(got.Minima) == 0 {
+			t.Errorf("status %d, reason %q, standard error\n%s", status, got.End.Reason, errs)
+		}
 	}
 }
 

@@ -13,7 +13,7 @@ import (
 )
 
 // public are the packages users import.
-var public = []string{"", "design", "formula", "linfit"}
+var public = []string{"", "design", "formula", "linfit", "nlfit"}
 
 // maxNames is how many package-level identifiers a package may export.
 const maxNames = 40

@@ -17,7 +17,8 @@ var arrows = map[string][]string{
 	"design":            {"formula", "internal/dd", "internal/errtext", "internal/expr", "internal/factored", "internal/lsq", "internal/tape"},
 	"":                  {"design", "formula", "internal/dd", "internal/dist", "internal/errtext", "internal/factored", "internal/handover", "internal/lsq"},
 	"linfit":            {"", "design", "formula", "internal/dd", "internal/errtext", "internal/factored", "internal/handover", "internal/lsq"},
-	"examples/fitfile":  {"", "design", "linfit"},
+	"nlfit":             {"", "design", "formula", "internal/dd", "internal/errtext", "internal/factored", "internal/handover", "internal/lsq", "internal/search", "internal/tape"},
+	"examples/fitfile":  {"", "design", "formula", "linfit", "nlfit"},
 	"examples/furnaces": {"", "design", "linfit"},
 	"internal/dd":       {},
 	"internal/digits":   {},
@@ -29,6 +30,7 @@ var arrows = map[string][]string{
 	"internal/house":    {},
 	"internal/lsq":      {"internal/dd"},
 	"internal/scenario": {},
+	"internal/search":   {"internal/dd"},
 	"internal/tape":     {"formula"},
 }
 

@@ -121,7 +121,11 @@ func Solve(p *Problem, o *Options) (*Result, error) {
 	if p.Start != nil {
 		// With and without finding the linear parameters afresh after each step:
 		// either may walk past what stops the other.
-		w, other := s.refine(p.Start, s.budget, false), s.refine(p.Start, s.budget, true)
+		share := s.budget / 2
+		if o.Elsewhere {
+			share = s.budget / 4
+		}
+		w, other := s.refine(p.Start, share, false), s.refine(p.Start, share, true)
 		if w == nil || other != nil && other.rss < w.rss*(1-1e-6) {
 			w = other
 		}
@@ -136,7 +140,13 @@ func Solve(p *Problem, o *Options) (*Result, error) {
 	if err := s.step(found); err != nil {
 		return s.partial(found, err)
 	}
-	starts := s.starts()
+	// What is left of the budget: a quarter for ranking starts, a quarter for a few
+	// steps from each, the rest for the walks to the end.
+	left := s.budget - s.used()
+	if left < 50 && len(found) > 0 {
+		return s.result(found)
+	}
+	starts := s.starts(left / 4)
 	ranked := s.rank(starts)
 	if len(ranked) == 0 && len(found) == 0 {
 		return nil, ErrNoFinite
@@ -147,9 +157,9 @@ func Solve(p *Problem, o *Options) (*Result, error) {
 	// A few steps from each of the better starts tell more than their sums of
 	// squares; the best then go all the way.
 	if len(ranked) > refined {
-		ranked = ranked[:min(tried, len(ranked))]
+		ranked = ranked[:max(1, min(tried, len(ranked), left/(4*2*fewSteps)))]
 		s.parallel(len(ranked), func(i int) {
-			if w := s.refine(ranked[i].theta, fewSteps, true); w != nil {
+			if w := s.refine(ranked[i].theta, 2*fewSteps, true); w != nil {
 				ranked[i] = start{w.theta, w.rss}
 			}
 		})
@@ -160,7 +170,7 @@ func Solve(p *Problem, o *Options) (*Result, error) {
 		return s.partial(found, err)
 	}
 	walks := make([]*walk, len(ranked))
-	each := max(50, (s.budget-s.used())/max(1, len(ranked)))
+	each := max(1, left/2/max(1, len(ranked)))
 	s.parallel(len(ranked), func(i int) { walks[i] = s.refine(ranked[i].theta, each, true) })
 	for _, w := range walks {
 		if w != nil {

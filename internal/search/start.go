@@ -15,7 +15,7 @@ type start struct {
 // starts draws points from an additive recurrence on the powers of the
 // generalised golden ratio (H. Weyl; the constants after M. Roberts, recalled),
 // shifted by the seed.
-func (s *solver) starts() [][]float64 {
+func (s *solver) starts(most int) [][]float64 {
 	p := s.p
 	var sought []int
 	for j := range p.P {
@@ -28,7 +28,7 @@ func (s *solver) starts() [][]float64 {
 	if len(sought) == 0 {
 		n = 1
 	}
-	n = min(n, max(1, s.budget/3))
+	n = min(n, max(1, most))
 	phi := 2.0
 	for range 40 {
 		phi = math.Pow(1+phi, 1/float64(d+1))

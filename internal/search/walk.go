@@ -64,8 +64,9 @@ func (s *solver) refine(from []float64, budget int, project bool) *walk {
 	out := &walk{}
 	lambda, grow := 1e-3, 2.0
 	small := 0
+	evals := 1
 	for out.iterations = 0; ; out.iterations++ {
-		if out.iterations >= budget {
+		if evals >= budget {
 			out.spent = true
 			break
 		}
@@ -108,9 +109,11 @@ func (s *solver) refine(from []float64, budget int, project bool) *walk {
 				break
 			}
 			t := s.newTrial(w)
+			evals++
 			next := s.evaluate(t, trial, false)
 			if projecting && next < math.Inf(1) {
 				again := slices.Clone(trial)
+				evals++
 				if v := s.project(t, again); v < next {
 					copy(trial, again)
 					next = v
@@ -135,6 +138,7 @@ func (s *solver) refine(from []float64, budget int, project bool) *walk {
 		}
 		before := rss
 		copy(theta, trial)
+		evals++
 		rss = s.evaluate(w, theta, true)
 		if before-rss <= 1e-14*before {
 			if small++; small >= 4 {
