@@ -269,11 +269,17 @@ func singularError(f *design.Frame, null [][]float64) *Error {
 			}
 		}
 		e.Names = append(e.Names, names...)
+		if len(names) == 0 {
+			continue
+		}
 		if len(names) == 1 {
 			words = append(words, names[0]+" is not determined by the data")
 		} else {
 			words = append(words, errtext.And(names)+" cannot be told apart: only a combination of them is determined")
 		}
+	}
+	if words == nil {
+		words = []string{"some coefficients are not determined by the data"}
 	}
 	e.Message = strings.Join(words, "; ")
 	e.Hint = "hold one of them at a value, as in k = 1, or take it out of the equation"
@@ -365,7 +371,7 @@ func finish(f *design.Frame, m *model, found *search.Result, root []float64) (*h
 				}
 				all[j] = v[q] * norm
 			}
-			if slices.Max(all) == 0 && slices.Min(all) == 0 {
+			if !(slices.Max(all) > 1e-290 || slices.Min(all) < -1e-290) {
 				// The fit does not feel the coefficient at all.
 				for q, j := range free {
 					all[j] = v[q]

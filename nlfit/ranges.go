@@ -20,7 +20,8 @@ type role struct {
 	width float64 // the column's range
 	low   float64 // the column's smallest and largest value
 	high  float64
-	even  bool // only the parameter's square, say, stands there
+	even  bool    // only the parameter's square, say, stands there
+	scale float64 // the size of what the place is added to
 }
 
 type roleKind uint8
@@ -32,6 +33,7 @@ const (
 	location                 // x - p: between the smallest and the largest x
 	exponent                 // x ^ p
 	base                     // p ^ x
+	summand                  // in a sum whose other parts hold parameters: of the sum's size
 	alone                    // no column beside it
 )
 
@@ -42,10 +44,14 @@ func ranges(f *design.Frame) []search.Range {
 	for k, part := range eq.Program.Parts() {
 		parts[part.Expr.String()] = f.Matrix.Parts()[k]
 	}
+	response := roleOf(alone, f.Y).size
+	if !(response > 0) {
+		response = 1
+	}
 	_, p := f.Matrix.Dims()
 	out := make([]search.Range, p)
 	for _, q := range eq.Params {
-		r := bounded(choose(roles(f.Plan.Model().Equation, q.Name, parts)), q)
+		r := bounded(choose(roles(f.Plan.Model().Equation, q.Name, parts, response)), q)
 		for j := q.From; j < q.To; j++ {
 			out[j] = r
 			if q.Link != "" || q.Own {
@@ -57,74 +63,114 @@ func ranges(f *design.Frame) []search.Range {
 }
 
 // roles finds the places of a parameter.
-func roles(e formula.Expr, name string, parts map[string][]float64) []role {
+func roles(e formula.Expr, name string, parts map[string][]float64, response float64) []role {
 	var out []role
-	var visit func(e formula.Expr)
-	visit = func(e formula.Expr) {
+	// scale is the size that e should have: of the response at the root, of what e
+	// is added to in a sum, 1 in the argument of a function.
+	var visit func(e formula.Expr, scale float64)
+	visit = func(e formula.Expr, scale float64) {
 		switch e := e.(type) {
 		case *formula.Unary:
-			visit(e.X)
+			visit(e.X, scale)
 		case *formula.Call:
 			for _, a := range e.Args {
-				visit(a)
+				visit(a, 1)
 			}
 		case *formula.Compare:
-			visit(e.X)
-			visit(e.Y)
+			visit(e.X, 1)
+			visit(e.Y, 1)
 			if x, ok := column(e.Y, parts); ok && is(e.X, name) {
 				out = append(out, roleOf(location, x))
 			} else if x, ok := column(e.X, parts); ok && is(e.Y, name) {
 				out = append(out, roleOf(location, x))
 			}
 		case *formula.Binary:
-			visit(e.X)
-			visit(e.Y)
-			left, right := is(e.X, name), is(e.Y, name)
-			x, evenX := evenPower(e.X)
-			y, evenY := evenPower(e.Y)
-			even := evenX && is(x, name) || evenY && is(y, name)
-			left, right = left || evenX && is(x, name), right || evenY && is(y, name)
-			if !left && !right {
-				return
-			}
-			if _, number := e.Y.(*formula.Number); number && e.Op == '^' {
-				return // its place is that of the power
-			}
-			other := e.Y
-			if right {
-				other = e.X
-			}
-			values, beside := column(other, parts)
-			if !beside {
-				values, beside = within(other, parts)
-			}
-			r := role{kind: alone}
-			if beside {
-				switch {
-				case e.Op == '*':
-					r = roleOf(rate, values)
-				case e.Op == '/' && right:
-					r = roleOf(size, values)
-				case e.Op == '/':
-					r = roleOf(size, values)
-				case e.Op == '+':
-					r = roleOf(offset, values)
-				case e.Op == '-':
-					r = roleOf(location, values)
-				case e.Op == '^' && right:
-					r = roleOf(exponent, values)
-				default:
-					r = roleOf(base, values)
+			switch e.Op {
+			case '+', '-':
+				if size := addends(e, parts); size > 0 {
+					scale = size
 				}
-			} else if e.Op == '^' && right {
-				r.kind = exponent
+				visit(e.X, scale)
+				visit(e.Y, scale)
+			case '/':
+				// What is divided by, so that the quotient has the scale.
+				over := addends(e.X, parts)
+				if over == 0 {
+					over = 1
+				}
+				visit(e.X, scale)
+				visit(e.Y, over/scale)
+			default:
+				visit(e.X, scale)
+				visit(e.Y, scale)
 			}
-			r.even = even
-			out = append(out, r)
+			if r, ok := roleIn(e, name, parts); ok {
+				r.scale = scale
+				out = append(out, r)
+			}
 		}
 	}
-	visit(e)
+	visit(e, response)
 	return out
+}
+
+// addends is the largest size among the summands of e without parameters; 0 when
+// there are none.
+func addends(e formula.Expr, parts map[string][]float64) float64 {
+	if b, ok := e.(*formula.Binary); ok && (b.Op == '+' || b.Op == '-') {
+		return math.Max(addends(b.X, parts), addends(b.Y, parts))
+	}
+	if n, ok := e.(*formula.Number); ok {
+		return n.Value
+	}
+	if x, ok := parts[e.String()]; ok {
+		return roleOf(alone, x).size
+	}
+	return 0
+}
+
+// roleIn is the role of the parameter as an operand of e.
+func roleIn(e *formula.Binary, name string, parts map[string][]float64) (role, bool) {
+	left, right := is(e.X, name), is(e.Y, name)
+	x, evenX := evenPower(e.X)
+	y, evenY := evenPower(e.Y)
+	even := evenX && is(x, name) || evenY && is(y, name)
+	left, right = left || evenX && is(x, name), right || evenY && is(y, name)
+	if !left && !right {
+		return role{}, false
+	}
+	if _, number := e.Y.(*formula.Number); number && e.Op == '^' {
+		return role{}, false // its place is that of the power
+	}
+	other := e.Y
+	if right {
+		other = e.X
+	}
+	sum := e.Op == '+' || e.Op == '-'
+	values, beside := column(other, parts)
+	if !beside && !sum {
+		values, beside = within(other, parts)
+	}
+	r := role{kind: alone, even: even}
+	switch {
+	case e.Op == '^' && right:
+		r.kind = exponent
+	case sum && !beside:
+		r.kind = summand
+	case !beside:
+	case e.Op == '*':
+		r = roleOf(rate, values)
+	case e.Op == '/':
+		r = roleOf(size, values)
+	case e.Op == '+':
+		r = roleOf(offset, values)
+	case e.Op == '-':
+		r = roleOf(location, values)
+	default:
+		r = roleOf(base, values)
+	}
+	r.even = even
+	return r, true
 }
 
 // is tells that e is the parameter, perhaps with a sign or a factor that is no
@@ -205,7 +251,10 @@ func roleOf(kind roleKind, x []float64) role {
 
 // choose turns the first telling place of a parameter into a range.
 func choose(list []role) search.Range {
-	best := role{kind: alone}
+	best := role{kind: alone, scale: 1}
+	if len(list) > 0 {
+		best = list[0]
+	}
 	for _, r := range list {
 		if best.kind == alone {
 			best = r
@@ -223,9 +272,13 @@ func choose(list []role) search.Range {
 	}
 	switch best.kind {
 	case rate:
-		return order(1 / math.Max(best.width, best.size/spread))
-	case size, offset:
+		return order(best.scale / math.Max(best.width, best.size/spread))
+	case size:
 		return order(best.size / 3)
+	case offset:
+		return order(best.size / 3)
+	case summand:
+		return order(best.scale)
 	case location:
 		return search.Range{Low: best.low, High: best.high}
 	case exponent:
@@ -233,7 +286,7 @@ func choose(list []role) search.Range {
 	case base:
 		return search.Range{Low: 0.05, High: 4, Log: true}
 	}
-	return order(1)
+	return order(best.scale)
 }
 
 // bounded cuts a range to the bounds of its parameter.

@@ -1,6 +1,9 @@
 package tape
 
-import "math"
+import (
+	"math"
+	"slices"
+)
 
 // A Scratch holds the blocks of one evaluation; make one for each goroutine.
 type Scratch struct {
@@ -403,11 +406,30 @@ func truth(b bool) float64 {
 }
 
 // Affine finds parameters in which the equation is jointly affine: f is a sum of
-// each of them times something free of all of them, and a rest. Parameters are
-// tried in order; first says which must not be taken.
+// each of them times something free of all of them, and a rest. The parameters
+// nearest the root of the equation are tried first, whatever the order of their
+// declaration; never says which must not be taken.
 func (p *Program) Affine(never []bool) []bool {
 	in := make([]bool, len(p.params))
-	for q := range p.params {
+	depth := make([]int, len(p.ops))
+	order := make([]int, len(p.params))
+	near := make([]int, len(p.params))
+	for q := range order {
+		order[q], near[q] = q, len(p.ops)+1
+	}
+	for i := len(p.ops) - 1; i >= 0; i-- {
+		o := &p.ops[i]
+		if o.kind == opParam {
+			near[o.slot] = depth[i]
+		}
+		for _, a := range o.args {
+			if depth[a] == 0 || depth[i]+1 < depth[a] {
+				depth[a] = depth[i] + 1
+			}
+		}
+	}
+	slices.SortStableFunc(order, func(a, b int) int { return near[a] - near[b] })
+	for _, q := range order {
 		if never != nil && never[q] {
 			continue
 		}
