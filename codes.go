@@ -79,6 +79,14 @@ const (
 	//	ask: prediction on the original scale
 	codeNoWayBack Code = "no-way-back"
 
+	// codeNotNested: two results are not fits of the same rows, one a special case
+	// of the other.
+	//
+	//	csv: x,y\n1,2\n2,3\n3,5\n
+	//	model: y ~ x
+	//	ask: comparison with itself
+	codeNotNested Code = "not-nested"
+
 	// codeSaturated: the model has a coefficient for every distinct row, so it
 	// cannot lack fit.
 	//
@@ -106,6 +114,7 @@ func Codes() []Code {
 		codeNoRepeats,
 		codeNoResult,
 		codeNoWayBack,
+		codeNotNested,
 		codeSaturated,
 		codeShortDestination,
 	}

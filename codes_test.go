@@ -39,6 +39,10 @@ var asks = map[string]func(r trammel.Result, t *design.Table) error{
 		_, err := trammel.LackOfFit(r)
 		return err
 	},
+	"comparison with itself": func(r trammel.Result, _ *design.Table) error {
+		_, err := trammel.Compare(r, r)
+		return err
+	},
 	"correlation": func(r trammel.Result, _ *design.Table) error {
 		_, err := trammel.Correlation(r)
 		return err

@@ -329,7 +329,7 @@ func (s *solver) end(w *walk) End {
 		}
 	}
 	switch {
-	case w.spent:
+	case w.spent && !(w.offset <= offsetTolerance):
 		e.Reason = "budget"
 	case len(e.Bound) > 0:
 		e.Reason = "bound active"
