@@ -1,7 +1,8 @@
 // Command furnaces does the main job on the plant's invented data: it asks which
 // sintering furnace differs from which, in offset and in rate, whether the
-// powder supplier matters, and shows how a model with a full set of hand-made
-// indicator columns is refused. It writes nothing but its report.
+// powder supplier matters, shows how a model with a full set of hand-made
+// indicator columns is refused, and fits the law by which discs shrink, with one
+// rate for all furnaces and with a rate for each. It writes nothing but its report.
 package main
 
 import (
@@ -10,10 +11,12 @@ import (
 	"fmt"
 	"io"
 	"os"
+	"path/filepath"
 
 	"example.com/trammel"
 	"example.com/trammel/design"
 	"example.com/trammel/linfit"
+	"example.com/trammel/nlfit"
 )
 
 func main() {
@@ -28,12 +31,7 @@ func main() {
 }
 
 func run(ctx context.Context, path string, w io.Writer) error {
-	file, err := os.Open(path)
-	if err != nil {
-		return fmt.Errorf("furnaces: %w; run it from the root of the repository, or name a CSV file", err)
-	}
-	defer file.Close()
-	table, err := design.ReadCSV(file, nil)
+	table, err := readTable(path)
 	if err != nil {
 		return err
 	}
@@ -73,7 +71,35 @@ func run(ctx context.Context, path string, w io.Writer) error {
 		return fmt.Errorf("furnaces: the full indicator set was not refused: %v", err)
 	}
 	fmt.Fprintln(w, refusal)
-	return nil
+
+	fmt.Fprintf(w, "\n4. Shrinkage approaches a limit: has each furnace a rate of its own?\n\n")
+	discs, err := readTable(filepath.Join(filepath.Dir(path), "shrinkage.csv"))
+	if err != nil {
+		return err
+	}
+	common, err := nlfit.Fit(ctx, "shrink = limit*(1 - exp(-k*hold)) fitting limit > 0, k > 0", discs, nil)
+	if err != nil {
+		return err
+	}
+	own, err := nlfit.Fit(ctx, "shrink = limit*(1 - exp(-k*hold)) fitting limit > 0, k by cat(furnace) > 0", discs, nil)
+	if err != nil {
+		return err
+	}
+	c, err := trammel.Compare(common, own)
+	if err != nil {
+		return err
+	}
+	fmt.Fprintf(w, "A rate for each furnace against one rate for all: F = %.2f on %d and %d, p = %.2g.\n\n", c.Stat, c.DF, own.Freedom(), c.P)
+	return report(own, w)
+}
+
+func readTable(path string) (*design.Table, error) {
+	file, err := os.Open(path)
+	if err != nil {
+		return nil, fmt.Errorf("furnaces: %w; run it from the root of the repository, or name a CSV file", err)
+	}
+	defer file.Close()
+	return design.ReadCSV(file, nil)
 }
 
 func report(r trammel.Result, w io.Writer) error {

@@ -110,7 +110,7 @@ func summaryKeys(t *testing.T) []string {
 	if err != nil {
 		t.Fatal(err)
 	}
-	// A model that fills every list: derived effects and a note.
+	// Models that fill every list: derived effects and a note, minima.
 	r, err := linfit.Fit(context.Background(), "porosity ~ cat(furnace against mean) + disc", table, nil)
 	if err != nil {
 		t.Fatal(err)

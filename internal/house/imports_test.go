@@ -19,7 +19,7 @@ var arrows = map[string][]string{
 	"linfit":            {"", "design", "formula", "internal/dd", "internal/errtext", "internal/factored", "internal/handover", "internal/lsq"},
 	"nlfit":             {"", "design", "formula", "internal/dd", "internal/errtext", "internal/factored", "internal/handover", "internal/lsq", "internal/search", "internal/tape"},
 	"examples/fitfile":  {"", "design", "formula", "linfit", "nlfit"},
-	"examples/furnaces": {"", "design", "linfit"},
+	"examples/furnaces": {"", "design", "linfit", "nlfit"},
 	"internal/dd":       {},
 	"internal/digits":   {},
 	"internal/dist":     {"internal/dd"},

@@ -53,3 +53,33 @@ func Furnaces() []byte {
 	}
 	return []byte(b.String())
 }
+
+// The true values behind testdata/shrinkage.csv: the linear shrinkage in percent
+// approaches a limit that all furnaces share at a rate per minute of their own;
+// F3 sinters faster.
+const (
+	TrueLimit         = 14.0
+	TrueShrinkRateF1  = 0.090
+	TrueShrinkRateF2  = 0.090
+	TrueShrinkRateF3  = 0.135
+	TrueShrinkScatter = 0.25
+)
+
+// Shrinkage is the text of testdata/shrinkage.csv: one row per disc, with the
+// furnace, the hold time at temperature in minutes and the shrinkage in percent.
+func Shrinkage() []byte {
+	rng := rand.New(rand.NewPCG(21, 4))
+	var b strings.Builder
+	b.WriteString("disc,furnace,hold,shrink\n")
+	disc := 0
+	for _, hold := range []float64{1.5, 3, 5, 7.5, 10.5, 14, 18, 23, 29, 36} {
+		for furnace, rate := range []float64{TrueShrinkRateF1, TrueShrinkRateF2, TrueShrinkRateF3} {
+			for range 2 {
+				disc++
+				y := TrueLimit*(1-math.Exp(-rate*hold)) + TrueShrinkScatter*rng.NormFloat64()
+				fmt.Fprintf(&b, "%d,F%d,%g,%.2f\n", disc, furnace+1, hold, y)
+			}
+		}
+	}
+	return []byte(b.String())
+}

@@ -291,7 +291,9 @@ func (s *solver) result(found []*walk) (*Result, error) {
 			best = minima[k]
 		}
 	}
-	s.polish(best)
+	if !best.spent || s.used() < s.budget {
+		s.polish(best)
+	}
 	if first := minima[order[0]]; first != best && first.given {
 		s.polish(first)
 	}

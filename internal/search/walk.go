@@ -61,7 +61,7 @@ func (s *solver) refine(from []float64, budget int, project bool) *walk {
 	scale := make([]float64, p)
 	gradient := make([]float64, p)
 	trial, delta := make([]float64, p), make([]float64, p)
-	out := &walk{}
+	out := &walk{offset: math.Inf(1)}
 	lambda, grow := 1e-3, 2.0
 	small := 0
 	evals := 1
