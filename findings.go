@@ -59,6 +59,7 @@ func findings(f *handover.Fit) []Note {
 		out = append(out, influential(f, stats)...)
 	}
 	out = append(out, nearDependencies(f)...)
+	out = append(out, bent(f)...)
 	if !f.ExactFit && normalErrors(f) {
 		out = append(out, curvature(f, stats)...)
 		out = append(out, unequalSpread(f, stats)...)
@@ -168,6 +169,20 @@ func influential(f *handover.Fit, stats *handover.RowStats) []Note {
 		out = append(out, Note{"sole-rows", strings.ToUpper(text[:1]) + text[1:]})
 	}
 	return out
+}
+
+// bent warns of intervals that a curved equation makes rough.
+func bent(f *handover.Fit) []Note {
+	if f.Plan.Equation() == nil || f.ExactFit {
+		return nil
+	}
+	c, err := CurvatureOf(&result{f})
+	if err != nil || !(c.ParameterEffects > c.Limit || c.Intrinsic > c.Limit) {
+		return nil
+	}
+	return []Note{{"curved-equation", fmt.Sprintf(
+		"The equation bends strongly over the uncertainty of its constants (parameter-effects curvature %.2g, intrinsic %.2g, to be held against %.2g): intervals from standard errors are rough; ask for profile intervals.",
+		c.ParameterEffects, c.Intrinsic, c.Limit)}}
 }
 
 // confounded names the pairs of an equation's coefficients whose estimates are

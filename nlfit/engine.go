@@ -7,6 +7,7 @@ import (
 	"example.com/trammel/design"
 	"example.com/trammel/internal/handover"
 	"example.com/trammel/internal/lsq"
+	"example.com/trammel/internal/search"
 )
 
 // An engine answers the numeric questions about a finished search from the
@@ -22,6 +23,7 @@ type engine struct {
 	dispersion float64
 	factor     *lsq.Factor // of the weighted Jacobian's free columns
 	problem    *lsq.Problem
+	search     *search.Problem
 
 	mu   sync.Mutex // guards what follows, and factor's scratch
 	last *model     // of the matrix asked about last

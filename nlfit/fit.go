@@ -136,7 +136,7 @@ func fit(ctx context.Context, f *design.Frame, opts *Options) (*handover.Fit, er
 	if found == nil {
 		return nil, refusal(err, f)
 	}
-	out, singular := finish(f, m, found, root)
+	out, singular := finish(f, m, found, problem)
 	switch {
 	case err != nil:
 		return out, refusal(err, f)
@@ -287,8 +287,8 @@ func singularError(f *design.Frame, null [][]float64) *Error {
 }
 
 // finish turns a search's end into a fit.
-func finish(f *design.Frame, m *model, found *search.Result, root []float64) (*handover.Fit, error) {
-	p := m.p
+func finish(f *design.Frame, m *model, found *search.Result, problem *search.Problem) (*handover.Fit, error) {
+	p, root := m.p, problem.Root
 	bound := make([]bool, p)
 	for _, j := range found.End.Bound {
 		bound[j] = true
@@ -300,6 +300,7 @@ func finish(f *design.Frame, m *model, found *search.Result, root []float64) (*h
 		}
 	}
 	e, _ := newEngine(f, m, found.Theta, free, root)
+	e.search = problem
 	out := &handover.Fit{Fitter: "nlfit", Path: "variable projection and Newton", Plan: f.Plan, Frame: f, Estimates: found.Theta,
 		DispersionEstimated: true, Corrected: true, Parameters: len(free) + 1, Engine: e,
 		Deviance: math.NaN(), NullDeviance: math.NaN(), Pearson: math.NaN(), Dispersion: math.NaN(), LogLik: math.NaN(),

@@ -108,6 +108,19 @@ type Leverager interface {
 	LeverageTo(dst []float64, m *design.Matrix, from, to int)
 }
 
+// A Profiler is an Engine whose model is not linear in its coefficients: it
+// follows the profile of coefficient j to where the square root of the rise of the
+// least sum of squares, over the residual standard deviation, is q. An end may be
+// infinite.
+type Profiler interface {
+	Profile(j int, q float64) (low, high float64)
+}
+
+// A Curved is an Engine that knows its model's curvature (Bates and Watts 1980).
+type Curved interface {
+	Curvature() (intrinsic, parameter float64, ok bool)
+}
+
 // RowStats holds one number per fitted row. Leverage is that of one of the
 // count copies a row stands for: Σ count·leverage = p.
 type RowStats struct {
