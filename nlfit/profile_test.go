@@ -144,7 +144,7 @@ func TestProfileEnds(t *testing.T) {
 	}
 }
 
-// TestCurvature: for one parameter the measures are |η''| in and beside the
+// TestCurvature: for one parameter the measures are |η”| in and beside the
 // tangent over |η'|², times the standard radius; intrinsic curvature is the same
 // for every way of writing the parameters; a linear equation has none.
 func TestCurvature(t *testing.T) {

@@ -37,7 +37,7 @@ var arrows = map[string][]string{
 // outside is what the module may import from elsewhere beside the standard
 // library, and where.
 var outside = map[string][]string{
-	"gonum.org/v1/gonum":                  {"", "design", "linfit", "internal/lsq", "internal/factored"},
+	"gonum.org/v1/gonum":                  {"", "design", "linfit", "nlfit", "internal/lsq", "internal/factored"},
 	"github.com/alecthomas/participle/v2": {"formula"},
 	"golang.org/x/text":                   {"internal/errtext"},
 }
