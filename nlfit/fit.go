@@ -240,12 +240,9 @@ func constantOrLevel(f *design.Frame, j int, q design.Parameter) bool {
 func refusal(err error, f *design.Frame) error {
 	text := f.Plan.Model().Text
 	span := f.Plan.Model().Equation.Span()
-	var singular *search.Singular
 	switch {
 	case err == nil:
 		return nil
-	case errors.As(err, &singular):
-		return singularError(f, singular.Null)
 	case errors.Is(err, search.ErrNoFinite):
 		return &Error{Code: codeNoFinite, Text: text, Span: span, Err: err,
 			Message: "the equation is finite at none of the values that were tried for its parameters", Hint: "give starts, or bounds that keep its functions defined"}

@@ -27,9 +27,8 @@ func newModel(eq *design.Equation, m *design.Matrix) *model {
 			continue
 		}
 		out.columns[j] = make([]float64, n)
-		lo := make([]float64, min(n, 1))
 		if hasLow(form, j) {
-			lo = make([]float64, n)
+			lo := make([]float64, n)
 			m.ColumnTo(out.columns[j], lo, j)
 			for i := range lo {
 				out.columns[j][i] += lo[i]

@@ -14,6 +14,7 @@ import (
 	"io"
 	"os"
 	"os/signal"
+	"strings"
 
 	"example.com/trammel"
 	"example.com/trammel/design"
@@ -56,7 +57,7 @@ func run(ctx context.Context, args []string, stdout, stderr io.Writer) int {
 			flags.PrintDefaults()
 			return 0
 		}
-		return misused("%v", err)
+		return misused("%s", flagFault(err.Error()))
 	}
 	switch {
 	case *data == "":
@@ -94,6 +95,24 @@ func run(ctx context.Context, args []string, stdout, stderr io.Writer) int {
 	return 0
 }
 
+// flagFault words what is wrong with the flags; the flag library gives only its
+// own text.
+func flagFault(text string) string {
+	if name, ok := strings.CutPrefix(text, "flag provided but not defined: "); ok {
+		return "there is no flag " + name
+	}
+	if name, ok := strings.CutPrefix(text, "flag needs an argument: "); ok {
+		return name + " needs a value after it"
+	}
+	if value, ok := strings.CutPrefix(text, "invalid value "); ok {
+		if value, name, ok := strings.Cut(value, " for flag "); ok {
+			name, _, _ = strings.Cut(name, ":")
+			return name + " is " + value + ", which is no number it can take"
+		}
+	}
+	return "the flags cannot be read; write them before the model, as below"
+}
+
 func readTable(path string) (*design.Table, error) {
 	file, err := os.Open(path)
 	if err != nil {
@@ -104,6 +123,9 @@ func readTable(path string) (*design.Table, error) {
 		return nil, fmt.Errorf("fitfile: the file %s cannot be read: %w", path, err)
 	}
 	defer file.Close()
+	if info, err := file.Stat(); err == nil && info.IsDir() {
+		return nil, fmt.Errorf("fitfile: %s is a folder; name a CSV file", path)
+	}
 	return design.ReadCSV(file, nil)
 }
 

@@ -86,12 +86,6 @@ type Result struct {
 // ErrNoFinite says that f was finite at none of the starts.
 var ErrNoFinite = errors.New("search: the model is finite at no start")
 
-// Singular says that the data do not determine some combinations of parameters:
-// moving along Null changes nothing.
-type Singular struct{ Null [][]float64 }
-
-func (s *Singular) Error() string { return "search: some combination of parameters is not determined" }
-
 // offsetTolerance is the relative offset at which a search counts as converged:
 // the estimates are then off by less than a thousandth of their standard errors.
 const offsetTolerance = 1e-3
