@@ -8,3 +8,5 @@ require (
 )
 
 require golang.org/x/text v0.44.0
+
+require golang.org/x/tools v0.52.0 // indirect

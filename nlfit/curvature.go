@@ -115,7 +115,7 @@ func (e *engine) secondDerivatives() [][]float64 {
 	ev := m.evaluator(true)
 	for start := 0; start < n; start += tape.Block {
 		rows := min(tape.Block, n-start)
-		for k, part := range m.matrix.Parts() {
+		for k, part := range m.parts {
 			ev.parts[k] = part[start : start+rows]
 		}
 		for q := range m.eq.Params {

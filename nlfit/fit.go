@@ -32,6 +32,10 @@ type Options struct {
 	// coefficients.
 	Budget int
 
+	// StayLocal keeps the search to the minimum reached from given starts. By
+	// default a small problem is also searched for lower minima elsewhere.
+	StayLocal bool
+
 	// Workers is the number of goroutines; 0 means GOMAXPROCS. Results are the
 	// same bit for bit for every number.
 	Workers int
@@ -102,21 +106,17 @@ func fit(ctx context.Context, f *design.Frame, opts *Options) (*handover.Fit, er
 	eq := f.Plan.Equation()
 	m := newModel(eq, f.Matrix)
 	root := roots(f)
-	problem := &search.Problem{N: m.n, P: m.p, Y: f.Y, Root: root, Linear: make([]bool, m.p), Range: ranges(f)}
-	pool := make(chan *evaluator, 64)
-	problem.Eval = func(theta, out, jac, v, hess []float64) bool {
-		var e *evaluator
-		select {
-		case e = <-pool:
-		default:
-			e = m.evaluator(true)
+	problem := &search.Problem{N: m.n, P: m.p, Y: f.Y, Root: root, Linear: make([]bool, m.p), Range: ranges(f), Eval: m.eval()}
+	// A parameter's levels begin together; the coefficients of a model of its own
+	// each by themselves.
+	problem.Group = make([]int, m.p)
+	for q, p := range eq.Params {
+		for j := p.From; j < p.To; j++ {
+			problem.Group[j] = q
+			if p.Own {
+				problem.Group[j] = len(eq.Params) + j
+			}
 		}
-		ok := e.evaluate(theta, out, jac, m.n, v, hess, 0, m.n)
-		select {
-		case pool <- e:
-		default:
-		}
-		return ok
 	}
 	bounds(problem, eq)
 	never := make([]bool, len(eq.Params))
@@ -131,8 +131,31 @@ func fit(ctx context.Context, f *design.Frame, opts *Options) (*handover.Fit, er
 	if err := given(problem, f, m); err != nil {
 		return nil, err
 	}
-	found, err := search.Solve(problem, &search.Options{Seed: opts.Seed, Budget: opts.Budget, Workers: opts.Workers, Elsewhere: m.n*m.p <= 20_000,
-		Step: func(search.Progress) error { return context.Cause(ctx) }})
+	o := &search.Options{Seed: opts.Seed, Budget: opts.Budget, Workers: opts.Workers, Elsewhere: !opts.StayLocal && m.n*m.p <= 20_000,
+		Step: func(search.Progress) error { return context.Cause(ctx) }}
+	if few := sample(m); few != nil && problem.Start == nil {
+		// Starts are sought on some of the rows; the walk over all of them begins
+		// where that search ended.
+		part := *problem
+		sub := m.subset(few)
+		part.N, part.Eval = len(few), sub.eval()
+		part.Y, part.Root = make([]float64, len(few)), nil
+		for i, r := range few {
+			part.Y[i] = f.Y[r]
+		}
+		if root != nil {
+			part.Root = make([]float64, len(few))
+			for i, r := range few {
+				part.Root[i] = root[r]
+			}
+		}
+		first, err := search.Solve(&part, o)
+		if err != nil {
+			return nil, refusal(err, f)
+		}
+		problem.Start = first.Theta
+	}
+	found, err := search.Solve(problem, o)
 	if found == nil {
 		return nil, refusal(err, f)
 	}
@@ -147,6 +170,44 @@ func fit(ctx context.Context, f *design.Frame, opts *Options) (*handover.Fit, er
 			Hint: "raise Budget, give starts, or check that the data can tell the parameters apart"}
 	}
 	return out, nil
+}
+
+// eval gives the search its evaluations, each with scratch of its own.
+func (m *model) eval() func(theta, out, jac, v, hess []float64) bool {
+	pool := make(chan *evaluator, 64)
+	return func(theta, out, jac, v, hess []float64) bool {
+		var e *evaluator
+		select {
+		case e = <-pool:
+		default:
+			e = m.evaluator(true)
+		}
+		ok := e.evaluate(theta, out, jac, m.n, v, hess, 0, m.n)
+		select {
+		case pool <- e:
+		default:
+		}
+		return ok
+	}
+}
+
+// sample lists the rows on which starts are sought when there are very many: every
+// so-manieth of them, in the golden ratio, at least a hundred for each coefficient.
+// nil for all.
+func sample(m *model) []int {
+	want := max(2000, 100*m.p)
+	if m.n <= 4*want {
+		return nil
+	}
+	const golden = 0.6180339887498949
+	var rows []int
+	for i := range m.n {
+		u := float64(i) * golden
+		if u-math.Floor(u) < float64(want)/float64(m.n) {
+			rows = append(rows, i)
+		}
+	}
+	return rows
 }
 
 // roots are the square roots of weight times count; nil when all are 1.

@@ -14,13 +14,14 @@ type model struct {
 	eq     *design.Equation
 	matrix *design.Matrix
 	n, p   int
+	parts  [][]float64 // the equation's parts without parameters
 	// columns[j] are the values of coefficient j's column; nil for the constant 1.
 	columns [][]float64
 }
 
 func newModel(eq *design.Equation, m *design.Matrix) *model {
 	n, p := m.Dims()
-	out := &model{eq: eq, matrix: m, n: n, p: p, columns: make([][]float64, p)}
+	out := &model{eq: eq, matrix: m, n: n, p: p, parts: m.Parts(), columns: make([][]float64, p)}
 	form := m.Form()
 	for j := range p {
 		if col := &form.Cols[j]; col.Num < 0 && len(col.Cells) == 0 {
@@ -36,6 +37,28 @@ func newModel(eq *design.Equation, m *design.Matrix) *model {
 			continue
 		}
 		m.ColumnTo(out.columns[j], nil, j)
+	}
+	return out
+}
+
+// subset is the model over some of its rows.
+func (m *model) subset(rows []int) *model {
+	pick := func(v []float64) []float64 {
+		if v == nil {
+			return nil
+		}
+		out := make([]float64, len(rows))
+		for i, r := range rows {
+			out[i] = v[r]
+		}
+		return out
+	}
+	out := &model{eq: m.eq, n: len(rows), p: m.p}
+	for _, v := range m.parts {
+		out.parts = append(out.parts, pick(v))
+	}
+	for _, v := range m.columns {
+		out.columns = append(out.columns, pick(v))
 	}
 	return out
 }
@@ -87,7 +110,7 @@ type evaluator struct {
 
 func (m *model) evaluator(second bool) *evaluator {
 	q := len(m.eq.Params)
-	e := &evaluator{m: m, s: m.eq.Program.NewScratch(second), second: second, parts: make([][]float64, len(m.matrix.Parts()))}
+	e := &evaluator{m: m, s: m.eq.Program.NewScratch(second), second: second, parts: make([][]float64, len(m.parts))}
 	for range q {
 		e.params = append(e.params, make([]float64, tape.Block))
 		e.d = append(e.d, make([]float64, tape.Block))
@@ -110,7 +133,7 @@ func (e *evaluator) evaluate(theta, f, jac []float64, ld int, v, hess []float64,
 	finite := true
 	for start := from; start < to; start += tape.Block {
 		m := min(tape.Block, to-start)
-		for k, part := range e.m.matrix.Parts() {
+		for k, part := range e.m.parts {
 			e.parts[k] = part[start : start+m]
 		}
 		for q := range e.m.eq.Params {

@@ -34,27 +34,7 @@ func (s *solver) polish(w *walk) {
 		if !s.p.Eval(theta, f, make([]float64, n*p), v, hess) {
 			return
 		}
-		for j := range p {
-			c := k.jac[j*n : (j+1)*n]
-			g := dd.Num{}
-			for i, x := range c {
-				hi, lo := dd.TwoProd(x, k.r[i])
-				g = g.Add(dd.Num{Hi: hi, Lo: lo})
-			}
-			gradient[j] = g.Float()
-			for q := range j + 1 {
-				sum := dd.Num{}
-				z := k.jac[q*n : (q+1)*n]
-				for i, x := range c {
-					hi, lo := dd.TwoProd(x, z[i])
-					sum = sum.Add(dd.Num{Hi: hi, Lo: lo})
-				}
-				hess[j*p+q] += sum.Float()
-				if q != j {
-					hess[q*p+j] += sum.Float()
-				}
-			}
-		}
+		s.addGram(k, hess, gradient)
 		free := s.freeOf(theta, gradient)
 		step, ok := newton(hess, gradient, p, free)
 		if !ok {
@@ -97,7 +77,12 @@ func (s *solver) polish(w *walk) {
 		}
 		gradient[j] = g
 	}
-	w.offset = s.offset(k, s.freeOf(w.theta, gradient), w.rss)
+	free := s.freeOf(w.theta, gradient)
+	var normal *gram
+	if s.tall() && len(free) > 0 {
+		normal = s.gramOf(k, free)
+	}
+	w.offset = s.offset(k, free, w.rss, normal)
 }
 
 // newton solves H δ = g for the free parameters by Cholesky's method on

@@ -29,6 +29,7 @@ type Problem struct {
 	Low, High []float64 // closed bounds; nil for none
 	Linear    []bool    // parameters in which f is jointly affine
 	Range     []Range   // where the others are sought
+	Group     []int     // coefficients of one group begin at one value; nil: each at its own
 	Start     []float64 // nil: the search finds its own
 }
 
@@ -151,14 +152,14 @@ func Solve(p *Problem, o *Options) (*Result, error) {
 	// A few steps from each of the better starts tell more than their sums of
 	// squares; the best then go all the way.
 	if len(ranked) > refined {
-		ranked = ranked[:max(1, min(tried, len(ranked), left/(4*2*fewSteps)))]
+		ranked = ranked[:max(1, min(tried, len(ranked), left/(4*2*fewSteps), max(12, 10_000_000/(p.N*p.P))))]
 		s.parallel(len(ranked), func(i int) {
 			if w := s.refine(ranked[i].theta, 2*fewSteps, true); w != nil {
 				ranked[i] = start{w.theta, w.rss}
 			}
 		})
 		sortStarts(ranked)
-		ranked = ranked[:min(refined, len(ranked))]
+		ranked = ranked[:min(refined, len(ranked), max(6, 5_000_000/(p.N*p.P)))]
 	}
 	if err := s.step(found); err != nil {
 		return s.partial(found, err)

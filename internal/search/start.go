@@ -17,11 +17,27 @@ type start struct {
 // shifted by the seed.
 func (s *solver) starts(most int) [][]float64 {
 	p := s.p
+	// sought holds one coefficient of each group, leader the place of each
+	// coefficient's group in it.
 	var sought []int
+	leader := make([]int, p.P)
+	places := make(map[int]int)
 	for j := range p.P {
-		if !p.Linear[j] && p.Range[j].Low < p.Range[j].High {
+		leader[j] = -1
+		if p.Linear[j] || p.Range[j].Low >= p.Range[j].High {
+			continue
+		}
+		group := -1 - j
+		if p.Group != nil {
+			group = p.Group[j]
+		}
+		k, ok := places[group]
+		if !ok {
+			k = len(sought)
+			places[group] = k
 			sought = append(sought, j)
 		}
+		leader[j] = k
 	}
 	d := 2 * len(sought) // a second coordinate gives each its sign
 	n := min(mostStarts, startsPerParameter*max(1, len(sought)))
@@ -42,7 +58,10 @@ func (s *solver) starts(most int) [][]float64 {
 				theta[j] = p.Range[j].Low
 			}
 		}
-		for k, j := range sought {
+		for j, k := range leader {
+			if k < 0 {
+				continue
+			}
 			u := fraction(0.5 + shift + float64(i+1)*math.Pow(1/phi, float64(k+1)))
 			v := fraction(0.5 + shift + float64(i+1)*math.Pow(1/phi, float64(len(sought)+k+1)))
 			theta[j] = p.Range[j].at(u, v)
@@ -144,7 +163,23 @@ func (s *solver) project(w *work, theta []float64) float64 {
 		}
 	}
 	x := make([]float64, len(linear))
-	rss := leastSquares(a, n, len(linear), w.r, x)
+	var rss float64
+	if s.tall() {
+		// The weighted columns stand in a; the Gram matrix is formed from there.
+		m := (&solver{p: &Problem{N: n, P: len(linear)}}).gramOf(&work{jac: a, r: w.r}, all(len(linear)))
+		y, ok := newton(m.a, m.g, len(linear), all(len(linear)))
+		if !ok {
+			return math.Inf(1)
+		}
+		copy(x, y)
+		rss = s.residual(w)
+		for k, v := range x {
+			rss -= v * m.g[k]
+		}
+		rss = math.Max(rss, 0)
+	} else {
+		rss = leastSquares(a, n, len(linear), w.r, x)
+	}
 	for k, j := range linear {
 		theta[j] = x[k]
 	}
@@ -160,6 +195,15 @@ func (s *solver) project(w *work, theta []float64) float64 {
 		}
 	}
 	return rss
+}
+
+// all lists 0 … n-1.
+func all(n int) []int {
+	out := make([]int, n)
+	for i := range out {
+		out[i] = i
+	}
+	return out
 }
 
 // residual fills w.r from w.f and returns its sum of squares.

@@ -86,13 +86,19 @@ func (s *solver) refine(from []float64, budget int, project bool) *walk {
 			break
 		}
 		free := s.freeOf(theta, gradient)
-		if out.offset = s.offset(w, free, rss); out.offset < 1e-9 || len(free) == 0 {
+		var normal *gram
+		if s.tall() && len(free) > 0 {
+			normal = s.gramOf(w, free)
+		}
+		if out.offset = s.offset(w, free, rss, normal); out.offset < 1e-9 || len(free) == 0 {
 			break
 		}
 		accepted := false
 		var moved float64
 		for try := 0; try < 60; try++ {
-			marquardt(w, n, free, scale, lambda, delta)
+			if normal == nil || !normal.step(free, scale, lambda, delta) {
+				marquardt(w, n, free, scale, lambda, delta)
+			}
 			copy(trial, theta)
 			for k, j := range free {
 				trial[j] += delta[k]
@@ -176,17 +182,23 @@ func (s *solver) freeOf(theta, gradient []float64) []int {
 
 // offset is the relative offset: the length of the residual vector's part in the
 // tangent plane over that of the rest, each by its degrees of freedom.
-func (s *solver) offset(w *work, free []int, rss float64) float64 {
+func (s *solver) offset(w *work, free []int, rss float64, normal *gram) float64 {
 	n, k := s.p.N, len(free)
 	if k == 0 {
 		return 0
 	}
-	a := w.scratch[:n*k]
-	for q, j := range free {
-		copy(a[q*n:(q+1)*n], w.jac[j*n:(j+1)*n])
+	var in, left float64
+	if normal != nil {
+		in = math.Min(normal.inTangent(), rss)
+		left = rss - in
+	} else {
+		a := w.scratch[:n*k]
+		for q, j := range free {
+			copy(a[q*n:(q+1)*n], w.jac[j*n:(j+1)*n])
+		}
+		left = leastSquares(a, n, k, w.r, make([]float64, k))
+		in = math.Max(0, rss-left)
 	}
-	left := leastSquares(a, n, k, w.r, make([]float64, k))
-	in := math.Max(0, rss-left)
 	if n <= k {
 		return math.Sqrt(in) / math.Sqrt(s.size()+1e-300)
 	}
