@@ -237,6 +237,7 @@ func TestTraps(t *testing.T) {
 			}
 			return ""
 		}},
+		{"a flat valley", "x,y\n1,1.01\n2,2.02\n3,2.98\n4,4.01\n5,4.99\n", "y = a*(1 - exp(-k*x))/k fitting a, k in (1e-9, 5)", "", "", nil},
 		{"no information on a parameter", "x,y\n1,2\n2,3\n3,5\n4,9\n", "y = a + b*x + 0*k fitting a, b, k", "singular", "singular", nil},
 		{"a lag beyond the data", "x,y\n1,2\n2,2.1\n3,1.9\n4,2\n", "y = a + b*max(0, x - lag) fitting a, b, lag in (5, 9)", "singular", "singular", nil},
 		{"overflow at the start", "x,y\n1,2.7\n2,7.3\n3,20.2\n4,54.5\n", "y = a*exp(b*x) fitting a start 1, b start 900", "start", "", nil},
@@ -290,7 +291,7 @@ func TestTraps(t *testing.T) {
 			}
 			continue
 		}
-		if r.End().Reason != c.reason {
+		if c.reason != "" && r.End().Reason != c.reason {
 			t.Errorf("%s: ended %q, want %q", c.name, r.End().Reason, c.reason)
 		}
 		if c.check != nil {
