@@ -1,7 +1,7 @@
 // Package search minimises sums of squares of nonlinear models: many starts
 // ranked by variable projection (G. H. Golub and V. Pereyra, SIAM J. Numer. Anal.
 // 10 (1973) 413-432), the best refined by a Levenberg-Marquardt method with scaled
-// variables (J. J. Moré, in Numerical Analysis, Lecture Notes in Mathematics 630,
+// variables (J. J. Moré, in Numerical Analysis, Dundee 1977, ed. G. A. Watson,
 // Springer 1978, 105-116), the lowest polished by Newton steps with exact second
 // derivatives. It knows numbers only: no formula, no table, and no constant with
 // the scale of any particular problem.
