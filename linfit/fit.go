@@ -78,7 +78,7 @@ func suited(m *formula.Model) error {
 	}
 	return &Error{Code: codeErrors, Text: m.Text, Span: e.Pos,
 		Message: fmt.Sprintf("%q is not normal errors with identity link, the one kind that linfit fits", e.String()),
-		Hint:    "package glm fits it; or leave the clause out"}
+		Hint:    "generalized linear models have no fitter here yet; leave the clause out for a least-squares fit, or model log(y)"}
 }
 
 // A run is what the parts of one fit share.

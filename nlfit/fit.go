@@ -71,7 +71,7 @@ func Fit(ctx context.Context, text string, t *design.Table, opts *Options) (tram
 	if m.Equation == nil {
 		what := "linfit fits it"
 		if m.Errors != nil {
-			what = "package glm is for it"
+			what = "its errors have no fitter here yet"
 		}
 		return nil, &Error{Code: codeTerms, Text: text, Span: m.Terms.Span(), Message: "the model is made of terms, and nlfit fits equations",
 			Hint: what + "; or write response = expression fitting its parameters"}
