@@ -188,3 +188,12 @@ func compareGolden(t *testing.T, path, got string) {
 		t.Errorf("the refusals differ from %s:\n%s", path, got)
 	}
 }
+
+// TestFarWeights: weights that leave too few rows standing are named as the cause.
+func TestFarWeights(t *testing.T) {
+	table := csvTable(t, "x,y,w\n1,1,1e-300\n2,2,1e300\n3,3.5,1\n4,4,1\n")
+	_, err := linfit.Fit(context.Background(), "y ~ x weighted w", table, nil)
+	if !errors.Is(err, linfit.Code("out-of-range")) || !strings.Contains(err.Error(), "weights range from 1e-300 to 1e+300") {
+		t.Errorf("got %v", err)
+	}
+}

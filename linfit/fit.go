@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"slices"
 	"math"
 	"runtime"
 
@@ -189,6 +190,13 @@ func solve(r *run, c *clusters) (*solved, error) {
 func deficient(f *design.Frame) error {
 	if err := f.CheckRank(); err != nil {
 		return err
+	}
+	if w := f.Weights; w != nil {
+		if low, high := slices.Min(w), slices.Max(w); low < 0x1p-80*high {
+			return &Error{Code: codeOutOfRange,
+				Message: fmt.Sprintf("weights range from %.3g to %.3g, so far apart that only the rows of the largest count, and they do not tell the columns apart", low, high),
+				Hint:    "bring the weights closer together; a row that should not count has weight 0"}
+		}
 	}
 	return &Error{Code: codeOutOfRange, Message: "the columns are linearly dependent as far as float64 can tell",
 		Hint: "bring the columns to comparable scale, or take a term out"}
