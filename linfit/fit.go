@@ -4,9 +4,9 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"slices"
 	"math"
 	"runtime"
+	"slices"
 
 	"example.com/trammel"
 	"example.com/trammel/design"
